@@ -1,0 +1,1 @@
+"""What the same words would have scored with no forecaster behind them."""

@@ -1,0 +1,1 @@
+"""What every room speaks: errors, issues, arrays, the codebook."""

@@ -1,0 +1,1 @@
+"""Statistics on plain arrays; every module is usable alone."""
