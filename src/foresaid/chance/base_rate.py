@@ -1,0 +1,176 @@
+"""How often the same words came true from earlier starts on the same instrument.
+
+An earlier start is a session whose whole window had ended before the call was published. The
+claim is carried to it through its marks, so that a level keeps its distance to the price.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from foresaid.model.bars import Windows
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator
+
+    from foresaid.claims.kernels import Kernel
+    from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray
+
+CELLS = 4_000_000  # outcomes held at once
+
+
+@dataclass(frozen=True)
+class Starts:
+    """What carries calls to other starts; arrays (n,), marks (n, 2).
+
+    Attributes
+    ----------
+    instrument : ndarray of int
+        Instrument number.
+    reference : ndarray of int
+        Position of the reference session: everything before it had closed at publication.
+    span : ndarray of int
+        From the reference session to the deadline, in days or in sessions, at least 1.
+    in_sessions : ndarray of bool
+        Which of the two ``span`` counts.
+    lag : ndarray of int
+        Sessions from the reference to the first of the path, 0 or 1.
+    additive : ndarray of bool
+        Whether prices are compared by difference.
+    marks : ndarray of float
+        Thresholds relative to the reference; NaN in columns the kind does not use.
+    """
+
+    instrument: IntArray
+    reference: IntArray
+    span: IntArray
+    in_sessions: BoolArray
+    lag: IntArray
+    additive: BoolArray
+    marks: FloatArray
+
+
+@dataclass(frozen=True)
+class BaseRate:
+    """Counts over earlier starts; arrays (n,).
+
+    Attributes
+    ----------
+    windows : ndarray of int
+        Earlier starts whose window had ended before publication.
+    hits : ndarray of int
+        How many of them came true.
+    disjoint : ndarray of int
+        How many windows of that length fit into the history without overlap.
+    """
+
+    windows: IntArray
+    hits: IntArray
+    disjoint: IntArray
+
+
+def base_rates(
+    kernel: Kernel, n_marks: int, bars: Bars, starts: Starts, tolerance: float
+) -> BaseRate:
+    """Return the base-rate counts of calls of one kind.
+
+    Parameters
+    ----------
+    kernel : Kernel
+        The kernel that settles the calls.
+    n_marks : int
+        How many columns of marks the kind uses.
+    bars : Bars
+        Prices; only those before each call's reference are counted.
+    starts : Starts
+        The n calls.
+    tolerance : float
+        Two prices this near each other, as a part of their size, are equal.
+
+    Returns
+    -------
+    BaseRate
+        Counts of shape (n,).
+
+    Notes
+    -----
+    Start ``t`` counts for a call with reference ``r`` when its nominal deadline (day ``t`` plus
+    the span) is no later than session ``r - 1``, the last that had closed at publication.
+    """
+    n = len(starts.reference)
+    windows, hits = np.zeros(n, dtype=np.int64), np.zeros(n, dtype=np.int64)
+    for rows in _signatures(starts):
+        earlier = _earlier_windows(bars, starts, rows)
+        if earlier is None:
+            continue
+        block = max(1, CELLS // max(1, len(earlier.all)))
+        for begin in range(0, len(rows), block):
+            part = rows[begin : begin + block]
+            marks = starts.marks[part, :n_marks]
+            came_true = kernel.outcomes(bars, earlier.all, marks, tolerance)
+            known = np.arange(len(earlier.all)) < earlier.known(bars, starts, part)[:, None]
+            windows[part] = known.sum(axis=1)
+            hits[part] = (came_true & known).sum(axis=1)
+    return BaseRate(windows, hits, disjoint_in_history(bars, starts))
+
+
+def disjoint_in_history(bars: Bars, starts: Starts) -> IntArray:
+    """Return how many windows of each call's length fit before it without overlap."""
+    floor = bars.offsets[starts.instrument]
+    before = np.maximum(starts.reference - 1, floor)
+    days = bars.day[before] - bars.day[floor]
+    length = np.where(starts.in_sessions, before - floor, days)
+    result: IntArray = length // np.maximum(starts.span, 1)
+    return result
+
+
+@dataclass(frozen=True)
+class _Earlier:
+    """All windows of one signature, by start, with the last day each one needs."""
+
+    all: Windows
+    needs: IntArray
+
+    def known(self, bars: Bars, starts: Starts, rows: IntArray) -> IntArray:
+        """Return how many of the windows had ended before each call."""
+        before = starts.reference[rows] - 1
+        have = np.where(starts.in_sessions[rows], before, bars.day[before])
+        return np.searchsorted(self.needs, have, side="right")
+
+
+def _signatures(starts: Starts) -> Iterator[IntArray]:
+    """Yield the rows that share instrument, window length and lag."""
+    keys = np.stack(
+        [starts.instrument, starts.span, starts.in_sessions, starts.lag, starts.additive]
+    )
+    if keys.shape[1]:
+        order = np.lexsort(keys)
+        steps = np.flatnonzero((np.diff(keys[:, order]) != 0).any(axis=0)) + 1
+        yield from np.split(order, steps)
+
+
+def _earlier_windows(bars: Bars, starts: Starts, rows: IntArray) -> _Earlier | None:
+    """Return every window that had ended before the latest of these calls."""
+    one = rows[0]
+    number, span = int(starts.instrument[one]), int(starts.span[one])
+    floor = int(bars.offsets[number])
+    latest = int(starts.reference[rows].max())
+    at = np.arange(floor, latest, dtype=np.int64)
+    if starts.in_sessions[one]:
+        last = at + span
+        needs = last
+        ended = needs <= latest - 1
+    else:
+        needs = bars.day[at] + span
+        ended = needs <= bars.day[latest - 1] if len(at) else np.zeros(0, dtype=bool)
+        last = bars.at_or_before(np.full(len(at), number), needs)
+    sound = ended & (last > at)
+    if not sound.any():
+        return None
+    at, last = at[sound], last[sound]
+    additive = np.full(len(at), bool(starts.additive[one]))
+    windows = Windows(np.full(len(at), floor), at, at + int(starts.lag[one]), last, additive)
+    return _Earlier(windows, needs[sound])

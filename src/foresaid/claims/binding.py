@@ -1,0 +1,93 @@
+"""From the numbers of a claim to marks: thresholds relative to a reference price."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+if TYPE_CHECKING:
+    from foresaid.claims.claim import Claim
+    from foresaid.claims.registry import Kind, Mark
+    from foresaid.model.bars import BoolArray, FloatArray, IntArray
+
+UNIT_CODES = {"": 0, "%": 1, "pp": 2, "bp": 3, "pt": 4}
+
+
+def quantity_arrays(claims: list[Claim], width: int) -> tuple[FloatArray, IntArray]:
+    """Return values and unit codes of claims of one kind, each of shape (n, width)."""
+    values = np.zeros((len(claims), width))
+    units = np.zeros((len(claims), width), dtype=np.int64)
+    for row, claim in enumerate(claims):
+        for column, quantity in enumerate(claim.quantities):
+            values[row, column] = quantity.value
+            units[row, column] = UNIT_CODES[quantity.unit]
+    return values, units
+
+
+def bind(
+    kind: Kind,
+    values: FloatArray,
+    units: IntArray,
+    *,
+    reference: FloatArray,
+    level_factor: FloatArray,
+    additive: BoolArray,
+) -> FloatArray:
+    """Return the marks of claims of one kind.
+
+    Parameters
+    ----------
+    kind : Kind
+        The kind, already in the instrument's sense.
+    values, units : ndarray, shape (n, n_quantities)
+        The numbers as stated and their unit codes.
+    reference : ndarray of float, shape (n,)
+        Reference prices in continuous units.
+    level_factor : ndarray of float, shape (n,)
+        Continuous price over stated price on the day of the statement.
+    additive : ndarray of bool, shape (n,)
+        Whether prices are compared by difference.
+
+    Returns
+    -------
+    ndarray of float, shape (n, n_marks)
+        Price over reference, or price less reference where ``additive``.
+    """
+    columns = [
+        _mark(mark, values, units, reference, level_factor, additive) for mark in kind.marks
+    ]
+    return np.stack(columns, axis=1)
+
+
+def _mark(
+    mark: Mark,
+    values: FloatArray,
+    units: IntArray,
+    reference: FloatArray,
+    level_factor: FloatArray,
+    additive: BoolArray,
+) -> FloatArray:
+    here = np.where(additive, 0.0, 1.0)
+    if mark.role == "here":
+        return here
+    stated = values[:, mark.quantity]
+    divisor = np.where(additive, 1.0, reference)
+    if mark.role == "level":
+        level = stated * level_factor
+        return np.where(additive, level - reference, level / divisor)
+    size = _size(stated, units[:, mark.quantity], divisor, level_factor)
+    if mark.role == "gain":
+        return here + size
+    if mark.role == "loss":
+        return here - size
+    change = size if mark.role == "gain of thing" else -size
+    return np.where(additive, -change, 1.0 / (1.0 + np.where(additive, 0.0, change)))
+
+
+def _size(
+    stated: FloatArray, unit: IntArray, divisor: FloatArray, level_factor: FloatArray
+) -> FloatArray:
+    """Return a size as a part of the reference, or in price units where additive."""
+    scale: FloatArray = np.choose(unit, [1.0, 0.01, 1.0, 0.01, level_factor / divisor])
+    return stated * scale

@@ -1,0 +1,276 @@
+"""Claim phrases: text to claim, claim to canonical text, and helpful words for the rest."""
+
+from __future__ import annotations
+
+import difflib
+import re
+from functools import lru_cache
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from foresaid.claims.claim import Claim, PhraseError, Quantity
+from foresaid.claims.registry import KINDS, NOT_A_CALL, SLOT
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+
+    from foresaid.claims.registry import Kind
+    from foresaid.model.codebook import InstrumentKind
+
+NUMBER = re.compile(r"[+-]?(\d{1,3}(,\d{3})+|\d+)(\.\d+)?")
+SIZE = re.compile(r"(?P<number>[+-]?[\d,.]+)(?P<unit>%|pp|bp|pt)?")
+GAP_BEFORE_UNIT = re.compile(r"(?<=\d)\s+(?=(%|pp|bp|pt)(\s|$))")
+EXAMPLES = {"level": ("5000", "5500"), "size": ("5%",)}
+
+
+@lru_cache(maxsize=100_000)
+def parse_claim(text: str) -> Claim:
+    """Return the claim that a phrase states.
+
+    Parameters
+    ----------
+    text : str
+        A phrase as typed; case and spacing do not matter.
+
+    Returns
+    -------
+    Claim
+
+    Raises
+    ------
+    PhraseError
+        If the phrase is on no registered form; names the word and the nearest legal phrase.
+
+    Examples
+    --------
+    >>> parse_claim("Ends above 5,000").quantities[0].value
+    5000.0
+    """
+    words = GAP_BEFORE_UNIT.sub("", text).split()
+    if not words:
+        raise PhraseError("there is no claim", f"Write one such as `{_example('ends above')}`.")
+    if _says_not_a_call(words):
+        return _not_a_call(text)
+    for kind in KINDS.values():
+        if _shape_fits(kind, words):
+            return _fill(kind, words)
+    raise _unreadable(words)
+
+
+def print_claim(claim: Claim) -> str:
+    """Return the canonical phrase of a claim.
+
+    Examples
+    --------
+    >>> print_claim(parse_claim("ends  HIGHER by 5.0 %"))
+    'ends higher by 5%'
+    """
+    if claim.reason:
+        return f"{NOT_A_CALL}: {claim.reason}"
+    texts = iter(print_number(q.value) + q.unit for q in claim.quantities)
+    return SLOT.sub(lambda _: next(texts), KINDS[claim.kind].form)
+
+
+def print_number(value: float) -> str:
+    """Return the shortest decimal text that reads back as ``value``.
+
+    Examples
+    --------
+    >>> print_number(5000.0), print_number(0.1)
+    ('5000', '0.1')
+    """
+    return np.format_float_positional(value, trim="-")
+
+
+def legal_forms() -> list[str]:
+    """Return every legal phrase with examples in its slots, in the order of the registry."""
+    return [_example(name) for name in KINDS] + [f"{NOT_A_CALL}: no date"]
+
+
+def unit_faults(
+    claim: Claim, kind_name: str, instrument_kind: InstrumentKind
+) -> PhraseError | None:
+    """Return what is wrong with the units of a claim on an instrument of that kind.
+
+    Parameters
+    ----------
+    claim : Claim
+        Any claim.
+    kind_name, instrument_kind : str, InstrumentKind
+        The instrument's kind in the codebook, by name and content.
+
+    Returns
+    -------
+    PhraseError or None
+        None when every size has a unit the kind knows.
+    """
+    for quantity in claim.quantities:
+        if not quantity.unit:
+            if quantity.value <= 0 and not instrument_kind.negative:
+                level = print_number(quantity.value)
+                return PhraseError(
+                    f"the level {level} cannot be a price of a {kind_name}",
+                    "Write a level above zero.",
+                )
+        elif quantity.unit not in instrument_kind.units:
+            return _wrong_unit(quantity, kind_name, instrument_kind)
+    return None
+
+
+def _wrong_unit(
+    quantity: Quantity, kind_name: str, instrument_kind: InstrumentKind
+) -> PhraseError:
+    number = print_number(quantity.value)
+    if quantity.unit == "%" and "pp" in instrument_kind.units:
+        return PhraseError(
+            f"`{number}%` of a {kind_name} has two readings: {number} percentage points, or "
+            f"{number} percent of its value (at 4.00 that is "
+            f"{print_number(round(4.0 * quantity.value, 9))}bp)",
+            f"Write `{number}pp` for the first, or the second in basis points, such as "
+            f"`{print_number(round(4.0 * quantity.value, 9))}bp`.",
+        )
+    allowed = " or ".join(f"`{number}{unit}`" for unit in instrument_kind.units)
+    return PhraseError(f"a {kind_name} does not move in `{quantity.unit}`", f"Write {allowed}.")
+
+
+def _example(name: str) -> str:
+    return _in_words(KINDS[name], ())
+
+
+def _tokens(kind: Kind) -> list[str]:
+    return kind.form.split()
+
+
+def _shape_fits(kind: Kind, words: list[str]) -> bool:
+    """Whether the words are those of the form, with something number-like in each slot."""
+    tokens = _tokens(kind)
+    return len(tokens) == len(words) and all(
+        _fits(token, word) for token, word in zip(tokens, words, strict=True)
+    )
+
+
+def _fits(token: str, word: str) -> bool:
+    if SLOT.fullmatch(token):
+        return word[:1] in "+-.0123456789" or word[1:2].isdigit()
+    return token == word.lower()
+
+
+def _fill(kind: Kind, words: list[str]) -> Claim:
+    quantities = []
+    for token, word in zip(_tokens(kind), words, strict=True):
+        slot = SLOT.fullmatch(token)
+        if slot:
+            read = _level if slot.group(1) == "level" else _size
+            quantities.append(read(word, kind))
+    if kind.ascending and quantities[0].value >= quantities[1].value:
+        raise PhraseError(
+            f"the range goes from {words[-3]} to {words[-1]}; the lower level comes first",
+            f"Write `{' '.join([*words[:-3], words[-1], words[-2], words[-3]])}`.",
+        )
+    return Claim(kind.name, tuple(quantities))
+
+
+def _level(word: str, kind: Kind) -> Quantity:
+    if NUMBER.fullmatch(word):
+        return Quantity(float(word.replace(",", "")))
+    if SIZE.fullmatch(word) and NUMBER.fullmatch(word.rstrip("%pbt")):
+        raise PhraseError(
+            f"`{word}` is a size where `{kind.name}` needs a level, the price itself",
+            f"Write a level, `{_example(kind.name)}`, or a size, `ends higher by {word}`.",
+        )
+    raise PhraseError(*_bad_number(word))
+
+
+def _size(word: str, kind: Kind) -> Quantity:
+    match = SIZE.fullmatch(word.lower())
+    if match is None or not NUMBER.fullmatch(match["number"]):
+        raise PhraseError(*_bad_number(word))
+    value = float(match["number"].replace(",", ""))
+    unit = match["unit"]
+    if unit is None:
+        raise PhraseError(
+            f"`{word}` has no unit; `{kind.name}` needs a size",
+            f"Write `{word}%`, `{word}pt` (points), `{word}pp` (percentage points of a yield) "
+            f"or `{word}bp` (basis points); for a price, `ends above {word}`.",
+        )
+    if value <= 0:
+        raise PhraseError(
+            f"the size `{word}` must be above zero", "The words higher and lower give the side."
+        )
+    if unit == "%" and value >= 100 and any(m.role.startswith("loss") for m in kind.marks):
+        raise PhraseError(f"nothing can lose `{word}`", "Write a size below 100%.")
+    return Quantity(value, unit)
+
+
+def _bad_number(word: str) -> tuple[str, str]:
+    plain = word.rstrip("%pbt")
+    if "," in plain and not NUMBER.fullmatch(plain):
+        return (
+            f"`{word}` is not a number here: a comma may only set off thousands",
+            "Write the decimal mark as a point, such as 4.25, and no other marks.",
+        )
+    return f"`{word}` is not a number", "Write digits, such as 5000 or 4.25 or 5%."
+
+
+def _says_not_a_call(words: list[str]) -> bool:
+    head = " ".join(words[:3]).lower().rstrip(":").rstrip()
+    return head == NOT_A_CALL
+
+
+def _not_a_call(text: str) -> Claim:
+    reason = " ".join(text.partition(":")[2].split()).lower()
+    if not reason:
+        raise PhraseError(
+            "`not a call` needs a reason", f"Write `{NOT_A_CALL}: no date` or another reason."
+        )
+    return Claim(NOT_A_CALL, reason=reason)
+
+
+def _unreadable(words: list[str]) -> PhraseError:
+    """Return the fault of a phrase on no form: the word at fault and the nearest phrase."""
+    kind = _nearest(words)
+    at = _first_misfit(_tokens(kind), words)
+    example = _in_words(kind, words)
+    if at < len(words):
+        message = f"the word `{words[at]}` is not understood here"
+    else:
+        message = f"the phrase stops after `{words[-1]}`"
+    return PhraseError(message, f"The nearest phrase is `{example}`.")
+
+
+def _nearest(words: list[str]) -> Kind:
+    shape = " ".join(_shape(word) for word in words)
+
+    def likeness(kind: Kind) -> tuple[float, int]:
+        form = " ".join(SLOT.sub("0", token) for token in _tokens(kind))
+        ratio = difflib.SequenceMatcher(None, shape, form).ratio()
+        return ratio, -abs(len(_tokens(kind)) - len(words))
+
+    return max(KINDS.values(), key=likeness)
+
+
+def _shape(word: str) -> str:
+    return "0" if word[:1] in "+-.0123456789" or word[1:2].isdigit() else word.lower()
+
+
+def _first_misfit(tokens: list[str], words: list[str]) -> int:
+    for at, (token, word) in enumerate(zip(tokens, words, strict=False)):
+        if not _fits(token, word):
+            return at
+    return min(len(tokens), len(words))
+
+
+def _in_words(kind: Kind, words: Iterable[str]) -> str:
+    """Return the form of ``kind``, with the numbers of ``words`` where they fit."""
+    numbers = [word for word in words if _shape(word) == "0"]
+    spare = {slot: iter(texts) for slot, texts in EXAMPLES.items()}
+
+    def fill(slot: re.Match[str]) -> str:
+        number = numbers.pop(0) if numbers else next(spare[slot.group(1)])
+        has_unit = number[-1:] in "%pbt"
+        if slot.group(1) == "size":
+            return number if has_unit else number + "%"
+        return number.rstrip("%pbt") if has_unit else number
+
+    return SLOT.sub(fill, kind.form)

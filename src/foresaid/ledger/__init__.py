@@ -1,0 +1,1 @@
+"""The ledger file: the only SQL of the project."""

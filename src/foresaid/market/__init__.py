@@ -1,0 +1,1 @@
+"""Price histories as aligned arrays, with corporate actions and venue hours."""

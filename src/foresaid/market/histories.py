@@ -1,0 +1,194 @@
+"""From price rows and actions to the arrays that kernels read."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from foresaid.market.actions import FactorSteps, factor_steps
+from foresaid.model.bars import Bars, concatenate_bars
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+    from datetime import date
+
+    from foresaid.model.bars import BoolArray, FloatArray, IntArray
+    from foresaid.model.codebook import Codebook
+    from foresaid.model.records import Action, Instrument
+
+
+@dataclass(frozen=True)
+class PriceHistory:
+    """One instrument's prices in the units of the file; arrays (n,), oldest first.
+
+    ``high`` and ``low`` are NaN where the file had none.
+    """
+
+    day: IntArray
+    high: FloatArray
+    low: FloatArray
+    close: FloatArray
+
+
+@dataclass(frozen=True)
+class Venue:
+    """What settlement needs to know of each instrument; arrays (n_instruments,).
+
+    Attributes
+    ----------
+    opens, closes : ndarray of int
+        Local minutes after midnight.
+    hours_known : ndarray of bool
+        Whether the hours are the instrument's own, not the codebook's default.
+    additive : ndarray of bool
+        Whether prices are compared by difference.
+    weekends : ndarray of bool
+        Whether it trades on Saturdays and Sundays.
+    total_return : ndarray of bool
+        Whether its only prices are a total-return series, which has no levels.
+    """
+
+    opens: IntArray
+    closes: IntArray
+    hours_known: BoolArray
+    additive: BoolArray
+    weekends: BoolArray
+    total_return: BoolArray
+
+
+@dataclass(frozen=True)
+class Market:
+    """Everything known about prices on one day, in one vintage."""
+
+    bars: Bars
+    venue: Venue
+    steps: tuple[FactorSteps, ...]
+    adjusted: BoolArray
+    as_of_day: int
+
+    def level_factor(self, instrument: IntArray, day: IntArray) -> FloatArray:
+        """Return continuous price over a price stated on that day, shape (n,)."""
+        result = np.ones(len(day))
+        for number in np.unique(instrument):
+            rows = instrument == number
+            result[rows] = self.steps[number].at(day[rows])
+        return result
+
+    def in_file_units(self, price: FloatArray, positions: IntArray) -> FloatArray:
+        """Return continuous prices as they stand in the file, shape (n,).
+
+        Undoing the factor may leave an error in the last place, so where there is one the
+        price is kept to 12 significant digits.
+        """
+        factor = self.bars.factor[positions]
+        plain = price / factor
+        with np.errstate(divide="ignore", invalid="ignore"):
+            places = np.power(10.0, 11.0 - np.floor(np.log10(np.abs(plain))))
+        kept = np.where(np.isfinite(places), np.round(plain * places) / places, plain)
+        return np.where(factor == 1.0, price, kept)
+
+
+def build_market(
+    instruments: Sequence[Instrument],
+    histories: Mapping[str, PriceHistory],
+    actions: Sequence[Action],
+    series: Mapping[str, str],
+    codebook: Codebook,
+    *,
+    as_of: date,
+) -> Market:
+    """Return the market of these instruments as it was known at the end of a day.
+
+    Parameters
+    ----------
+    instruments : sequence of Instrument
+        Their order becomes the instrument number.
+    histories : mapping of str to PriceHistory
+        By symbol; an instrument without prices may be absent.
+    actions : sequence of Action
+        Splits and rebases become factors; the rest is left to settlement.
+    series : mapping of str to str
+        What the prices are: raw (the default), split-adjusted or total-return. Split-adjusted
+        prices are in the units of the last session of the file.
+    codebook : Codebook
+        Behaviour of the instrument kinds.
+    as_of : date
+        Sessions after this day are left out.
+    """
+    today = int(np.datetime64(as_of, "D").astype(np.int64))
+    by_symbol: dict[str, list[Action]] = {one.symbol: [] for one in instruments}
+    for action in actions:
+        by_symbol[action.instrument].append(action)
+    steps = tuple(factor_steps(by_symbol[one.symbol]) for one in instruments)
+    kinds = np.array([series.get(one.symbol, "raw") for one in instruments], dtype=object)
+    columns = [
+        _columns(histories.get(one.symbol), step, kind, today)
+        for one, step, kind in zip(instruments, steps, kinds, strict=True)
+    ]
+    bars = concatenate_bars([one.symbol for one in instruments], columns)
+    return Market(
+        bars,
+        _venue(instruments, kinds == "total-return", codebook),
+        steps,
+        np.asarray(kinds == "split-adjusted", dtype=bool),
+        today,
+    )
+
+
+def _columns(
+    history: PriceHistory | None, steps: FactorSteps, kind: str, today: int
+) -> dict[str, FloatArray | IntArray | BoolArray]:
+    if history is None:
+        empty = np.zeros(0)
+        names = ("day", "high", "low", "close", "has_range", "factor")
+        return dict.fromkeys(names, empty)
+    day, close = history.day, history.close
+    factor = steps.at(day)
+    if kind == "split-adjusted":
+        # already in the units of the last session, whose factor holds throughout
+        factor = np.full(len(day), factor[-1] if len(factor) else 1.0)
+    has_range = np.isfinite(history.high) & np.isfinite(history.low)
+    columns: dict[str, FloatArray | IntArray | BoolArray] = {
+        "day": day,
+        "high": np.where(has_range, history.high, close) * factor,
+        "low": np.where(has_range, history.low, close) * factor,
+        "close": close * factor,
+        "has_range": has_range,
+        "factor": factor,
+    }
+    known = int(np.searchsorted(day, today, side="right"))
+    return {name: column[:known] for name, column in columns.items()}
+
+
+def _venue(
+    instruments: Sequence[Instrument], total_return: BoolArray, codebook: Codebook
+) -> Venue:
+    rules = codebook.settlement
+    kinds = [codebook.instrument_kinds[one.kind] for one in instruments]
+    known = np.array([bool(one.opens and one.closes) for one in instruments], dtype=bool)
+    opens = [minutes(one.opens) if one.opens else rules.default_opens for one in instruments]
+    closes = [
+        minutes(one.closes) if one.closes else rules.default_closes for one in instruments
+    ]
+    return Venue(
+        opens=np.array(opens, dtype=np.int64),
+        closes=np.array(closes, dtype=np.int64),
+        hours_known=known,
+        additive=np.array([kind.scale == "difference" for kind in kinds], dtype=bool),
+        weekends=np.array([kind.weekends for kind in kinds], dtype=bool),
+        total_return=np.asarray(total_return, dtype=bool),
+    )
+
+
+def minutes(clock: str) -> int:
+    """Return a time of day written HH:MM as minutes after midnight.
+
+    Examples
+    --------
+    >>> minutes("17:30")
+    1050
+    """
+    hours, _, rest = clock.partition(":")
+    return int(hours) * 60 + int(rest)

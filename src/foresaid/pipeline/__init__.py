@@ -1,0 +1,1 @@
+"""The only place that knows every stage: one function for each use of the ledger."""

@@ -1,0 +1,135 @@
+"""Settling a ledger: outcomes and chances of every call as of a day, kept in the ledger."""
+
+from __future__ import annotations
+
+from collections import Counter
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+import pandas as pd
+
+from foresaid import __version__
+from foresaid.chance.base_rate import Starts
+from foresaid.chance.per_call import chances
+from foresaid.ledger import queries, writes
+from foresaid.pipeline.outcome_rows import Judgement, outcome_rows, screened_out_rows
+from foresaid.pipeline.world import coded_calls, load_world
+from foresaid.settle.outcomes import group_calls, settle_calls
+
+if TYPE_CHECKING:
+    from datetime import date
+
+    from foresaid.chance.per_call import Chances
+    from foresaid.claims.registry import Kind
+    from foresaid.ledger.store import Ledger
+    from foresaid.model.bars import BoolArray, IntArray
+    from foresaid.model.codebook import Codebook
+    from foresaid.pipeline.world import CodedCalls, World
+    from foresaid.settle.outcomes import Outcomes
+
+
+@dataclass(frozen=True)
+class Settled:
+    """A settlement run: what it counted, and whether it was needed."""
+
+    as_of: date
+    counts: dict[str, int]
+    reasons: dict[str, int]
+    is_new: bool
+
+
+def judge(
+    ledger: Ledger, frame: pd.DataFrame, codebook: Codebook, *, as_of: date, vintage: int
+) -> Judgement:
+    """Return the outcomes and chances of calls, without touching the ledger."""
+    world = load_world(ledger, codebook, as_of=as_of, vintage=vintage)
+    calls = coded_calls(frame, world)
+    outcomes = settle_calls(
+        calls.times, calls.claims, world.market, calls.inverse, codebook.settlement
+    )
+    return Judgement(world, calls, outcomes, _chances(world, calls, outcomes, codebook))
+
+
+def settle_ledger(ledger: Ledger, codebook: Codebook, *, as_of: date, at: str) -> Settled:
+    """Settle every call as of a day and keep the outcomes.
+
+    A run from the very same calls, prices, codebook and day adds nothing.
+
+    Parameters
+    ----------
+    ledger : Ledger
+        Open for writing.
+    codebook : Codebook
+        The conventions.
+    as_of : date
+        Statements and prices after this day do not count.
+    at : str
+        Time of the run, RFC 3339, kept with it.
+    """
+    vintage, last_call = queries.vintage(ledger), queries.last_call(ledger)
+    header = {
+        "as_of": as_of.isoformat(),
+        "codebook": codebook.digest,
+        "vintage": vintage,
+        "last_call": last_call,
+        "program": __version__,
+    }
+    latest = queries.latest_settlement(ledger)
+    if latest is not None and _is_same(latest, header):
+        return _summary(queries.outcomes(ledger, latest.id), as_of, is_new=False)
+    frame = queries.calls(ledger)
+    frame = frame[frame["said_at"].str[:10] <= as_of.isoformat()].reset_index(drop=True)
+    is_call = frame["not_a_call"] == ""
+    real = frame[is_call].reset_index(drop=True)
+    judgement = judge(ledger, real, codebook, as_of=as_of, vintage=vintage)
+    table = pd.concat(
+        [outcome_rows(judgement), screened_out_rows(frame[~is_call])], ignore_index=True
+    )
+    rows = list(zip(*(table[name].tolist() for name in table.columns), strict=True))
+    with ledger.writing():
+        writes.add_codebook(ledger, codebook, codebook.canonical, at=at)
+        writes.add_settlement(ledger, header | {"settled_at": at}, rows)
+    return _summary(table, as_of, is_new=True)
+
+
+def _is_same(latest: queries.Settlement, header: dict[str, Any]) -> bool:
+    return all(str(getattr(latest, name)) == str(value) for name, value in header.items())
+
+
+def _summary(table: pd.DataFrame, as_of: date, *, is_new: bool) -> Settled:
+    counts = Counter(table["result"])
+    unsettled = table[table["result"].isin(["open", "void"])]
+    reasons = Counter(f"{row.result}: {row.reason}" for row in unsettled.itertuples())
+    return Settled(as_of, dict(counts), dict(reasons.most_common()), is_new)
+
+
+def _groups(calls: CodedCalls, rows: BoolArray) -> list[tuple[Kind, IntArray]]:
+    order = np.flatnonzero(rows)
+    found = group_calls(calls.claims.kind, calls.inverse, order)
+    return [(group.kind, group.rows) for group in found]
+
+
+def _chances(
+    world: World, calls: CodedCalls, outcomes: Outcomes, codebook: Codebook
+) -> Chances:
+    """Return the chance of every call whose window has begun and is sound."""
+    resolved, bars = outcomes.resolved, world.market.bars
+    windows = resolved.windows
+    fit = (resolved.matured | resolved.running) & (outcomes.result != "void")
+    fit &= np.isfinite(outcomes.marks[:, 0])
+    reference_day = bars.day[windows.reference] if len(bars.day) else windows.reference
+    in_sessions = calls.times.sessions > 0
+    span = np.where(in_sessions, calls.times.sessions, calls.times.deadline_day - reference_day)
+    starts = Starts(
+        instrument=calls.times.instrument,
+        reference=windows.reference,
+        span=np.maximum(span, 1),
+        in_sessions=in_sessions,
+        lag=windows.first - windows.reference,
+        additive=windows.additive,
+        marks=outcomes.marks,
+    )
+    return chances(
+        _groups(calls, fit), bars, starts, codebook.chance, codebook.settlement.tolerance
+    )

@@ -1,0 +1,121 @@
+"""What a ledger holds, as the arrays that settlement and chance read."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from foresaid.claims.binding import UNIT_CODES
+from foresaid.claims.phrases import parse_claim
+from foresaid.claims.registry import KINDS
+from foresaid.ledger import queries
+from foresaid.market.clock import local_times
+from foresaid.market.histories import Market, PriceHistory, build_market
+from foresaid.settle.outcomes import CallClaims
+from foresaid.settle.windows import CallTimes
+
+if TYPE_CHECKING:
+    from datetime import date
+
+    import pandas as pd
+
+    from foresaid.ledger.store import Ledger
+    from foresaid.model.bars import BoolArray
+    from foresaid.model.codebook import Codebook
+    from foresaid.model.records import Instrument
+
+MAX_QUANTITIES = 2
+CONDITION_OPEN = "its condition is not judged yet"
+OTHER_CURRENCY = "stated in a currency other than the instrument's"
+
+
+@dataclass(frozen=True)
+class World:
+    """The market with the instruments in the order of its numbers."""
+
+    market: Market
+    instruments: tuple[Instrument, ...]
+    number: dict[str, int]
+
+
+@dataclass(frozen=True)
+class CodedCalls:
+    """Calls as arrays, with the frame they came from (same order, calls only)."""
+
+    frame: pd.DataFrame
+    times: CallTimes
+    claims: CallClaims
+    inverse: BoolArray
+
+
+def load_world(ledger: Ledger, codebook: Codebook, *, as_of: date, vintage: int) -> World:
+    """Return the market as it was known at the end of a day, in one vintage."""
+    known = queries.instruments(ledger)
+    rows = queries.prices(ledger, vintage=vintage)
+    bounds = np.flatnonzero(np.diff(rows.instrument, prepend=-1, append=-1))
+    histories = {}
+    symbols = {key: symbol for symbol, (key, _) in known.items()}
+    for begin, end in zip(bounds[:-1], bounds[1:], strict=True):
+        own = slice(int(begin), int(end))
+        histories[symbols[int(rows.instrument[begin])]] = PriceHistory(
+            rows.day[own], rows.high[own], rows.low[own], rows.close[own]
+        )
+    instruments = tuple(one for _, one in known.values())
+    market = build_market(
+        instruments,
+        histories,
+        queries.actions(ledger, vintage=vintage),
+        queries.series_kinds(ledger, vintage=vintage),
+        codebook,
+        as_of=as_of,
+    )
+    return World(market, instruments, {one.symbol: i for i, one in enumerate(instruments)})
+
+
+def coded_calls(frame: pd.DataFrame, world: World) -> CodedCalls:
+    """Return the calls of a frame of ``queries.calls`` (no ``not a call`` rows) as arrays."""
+    number = np.array([world.number[symbol] for symbol in frame["instrument"]], dtype=np.int64)
+    zones = [world.instruments[i].zone for i in number]
+    day, minute = local_times(frame["said_at"].tolist(), zones)
+    deadline = np.array(
+        [text or "1970-01-01" for text in frame["deadline"]], dtype="datetime64[D]"
+    )
+    sessions = np.array([count or 0 for count in frame["sessions"]], dtype=np.int64)
+    times = CallTimes(number, day, minute, deadline.astype(np.int64), sessions)
+    inverse = np.array([one.sense == "inverse" for one in world.instruments], dtype=bool)
+    claims = _claims(frame, [world.instruments[i] for i in number])
+    return CodedCalls(frame, times, claims, inverse[number])
+
+
+def _claims(frame: pd.DataFrame, instruments: list[Instrument]) -> CallClaims:
+    """Return what the calls say; each distinct phrase is read once."""
+    phrases, codes = np.unique(frame["claim"].to_numpy(dtype=str), return_inverse=True)
+    parsed = [parse_claim(str(phrase)) for phrase in phrases]
+    values = np.zeros((len(parsed), MAX_QUANTITIES))
+    units = np.zeros((len(parsed), MAX_QUANTITIES), dtype=np.int64)
+    for row, claim in enumerate(parsed):
+        for column, quantity in enumerate(claim.quantities):
+            values[row, column] = quantity.value
+            units[row, column] = UNIT_CODES[quantity.unit]
+    kinds = np.array([claim.kind for claim in parsed], dtype=object)
+    priced = np.array([_names_a_price(claim.kind) for claim in parsed], dtype=bool)
+    blocked = _blocked(frame, instruments, priced[codes] if len(codes) else priced)
+    return CallClaims(kinds[codes], values[codes], units[codes], blocked)
+
+
+def _names_a_price(kind: str) -> bool:
+    return any(mark.role == "level" for mark in KINDS[kind].marks)
+
+
+def _blocked(
+    frame: pd.DataFrame, instruments: list[Instrument], priced: BoolArray
+) -> np.ndarray[Any, np.dtype[np.object_]]:
+    blocked = np.full(len(frame), "", dtype=object)
+    own = np.array([one.currency for one in instruments], dtype=object)
+    stated = frame["currency"].to_numpy(dtype=object)
+    differs = (stated != "") & (own != "") & (stated != own)
+    blocked[differs & priced] = OTHER_CURRENCY
+    blocked[frame["given"].to_numpy(dtype=object) != ""] = CONDITION_OPEN
+    return blocked

@@ -1,0 +1,1 @@
+"""Calls times market times conventions: outcomes, each with what decided it."""

@@ -1,0 +1,278 @@
+"""Outcomes: each call judged by its kind's kernel, with the alternates kept beside."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from foresaid.claims.binding import bind
+from foresaid.claims.registry import KINDS
+from foresaid.settle.windows import REASONS, VOID_REASONS, resolve_windows
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator
+
+    from foresaid.claims.kernels import Judged, Kernel
+    from foresaid.claims.registry import Kind
+    from foresaid.market.histories import Market
+    from foresaid.model.bars import BoolArray, FloatArray, IntArray, Windows
+    from foresaid.model.codebook import SettlementRules
+    from foresaid.settle.windows import CallTimes, Resolved
+
+CHUNK = 32_768  # windows judged at once: small enough to stay in the processor's cache
+NONE, MISS, HIT = -1, 0, 1
+CLOSE_BEFORE = "close_before"
+
+
+@dataclass(frozen=True)
+class CallClaims:
+    """What calls say; arrays over the n calls.
+
+    Attributes
+    ----------
+    kind : ndarray of str, shape (n,)
+        Names of registered kinds.
+    values, units : ndarray, shape (n, 2)
+        The numbers of the phrases and their unit codes (``claims.binding``).
+    blocked : ndarray of str, shape (n,)
+        Why a call cannot be settled yet whatever the prices say; empty for most.
+    """
+
+    kind: np.ndarray[Any, np.dtype[np.object_]]
+    values: FloatArray
+    units: IntArray
+    blocked: np.ndarray[Any, np.dtype[np.object_]]
+
+
+@dataclass(frozen=True)
+class Group:
+    """Calls that one kernel judges: ``rows`` of the input, ordered by reference."""
+
+    kind: Kind
+    rows: IntArray
+
+
+@dataclass(frozen=True)
+class Outcomes:
+    """What became of each call; arrays (n,) in the order of the input.
+
+    Attributes
+    ----------
+    result : ndarray of str
+        hit, miss, void or open.
+    reason : ndarray of str
+        Why a call is void or open, empty otherwise.
+    resolved : Resolved
+        The windows.
+    marks : ndarray of float, shape (n, 2)
+        Thresholds relative to the reference, NaN where there is none.
+    decided : ndarray of int
+        Position of the session that decided, -1 where nothing did.
+    value : ndarray of float
+        The price that decided, in continuous units, NaN where nothing did.
+    direction : ndarray of str
+        up, down or none; empty where the level decides and there is no reference yet.
+    alternates : dict of str to ndarray of int
+        Other readings: 1 hit, 0 miss, -1 where they do not apply.
+    tie : ndarray of bool
+        Whether the price that decided equals the mark of a strict comparison.
+    """
+
+    result: np.ndarray[Any, np.dtype[np.object_]]
+    reason: np.ndarray[Any, np.dtype[np.object_]]
+    resolved: Resolved
+    marks: FloatArray
+    decided: IntArray
+    value: FloatArray
+    direction: np.ndarray[Any, np.dtype[np.object_]]
+    alternates: dict[str, IntArray]
+    tie: BoolArray
+
+    @property
+    def is_early(self) -> BoolArray:
+        """Whether a call was settled before its deadline session was known."""
+        return (self.decided >= 0) & ~self.resolved.matured
+
+
+def alternate_names() -> list[str]:
+    """Return the names of all alternates that any kind keeps, in a fixed order."""
+    names = {name for kind in KINDS.values() for name in kind.alternates}
+    return [*sorted(names), CLOSE_BEFORE]
+
+
+def group_calls(
+    kinds: np.ndarray[Any, np.dtype[np.object_]], inverse: BoolArray, order: IntArray
+) -> Iterator[Group]:
+    """Yield the calls of each kind, the inverse sense apart, in the given order."""
+    names, codes = np.unique(kinds[order].astype(str), return_inverse=True)
+    for code, name in enumerate(names):
+        for sense in (False, True):
+            rows = order[(codes == code) & (inverse[order] == sense)]
+            if len(rows):
+                yield Group(KINDS[str(name)].in_sense(inverse=sense), rows)
+
+
+def settle_calls(
+    times: CallTimes,
+    claims: CallClaims,
+    market: Market,
+    inverse: BoolArray,
+    rules: SettlementRules,
+) -> Outcomes:
+    """Return what became of each call as of the market's day.
+
+    Parameters
+    ----------
+    times, claims : CallTimes, CallClaims
+        The n calls.
+    market : Market
+        Prices known by the day of settlement.
+    inverse : ndarray of bool, shape (n,)
+        Whether the call's instrument has inverse sense.
+    rules : SettlementRules
+        The codebook's conventions.
+
+    Returns
+    -------
+    Outcomes
+        Nothing in it depends on prices after a call's deadline session.
+    """
+    resolved = resolve_windows(times, market, rules)
+    work = _Work(claims, market, resolved, rules, level_factors(times, market))
+    work.leave(claims.blocked != "", "open", claims.blocked)
+    total_return = market.venue.total_return[times.instrument]
+    order = np.argsort(resolved.windows.reference, kind="stable")
+    for group in group_calls(claims.kind, inverse, order):
+        if group.kind.direction != "by level":
+            work.direction[group.rows] = group.kind.direction
+        if any(mark.role == "level" for mark in group.kind.marks):
+            barred = np.zeros(len(order), dtype=bool)
+            barred[group.rows] = total_return[group.rows]
+            work.leave(barred, "void", "a total-return series has no levels")
+        live = group.rows[work.is_live[group.rows]]
+        for start in range(0, len(live), CHUNK):
+            work.settle(group.kind, live[start : start + CHUNK])
+    return work.outcomes()
+
+
+def level_factors(times: CallTimes, market: Market) -> FloatArray:
+    """Return continuous price over stated price on the day of each statement."""
+    return market.level_factor(times.instrument, times.said_day)
+
+
+class _Work:
+    """The arrays of ``Outcomes`` while they are being filled."""
+
+    def __init__(
+        self,
+        claims: CallClaims,
+        market: Market,
+        resolved: Resolved,
+        rules: SettlementRules,
+        level_factor: FloatArray,
+    ) -> None:
+        n = len(claims.kind)
+        self.claims, self.market, self.resolved = claims, market, resolved
+        self.rules, self.level_factor = rules, level_factor
+        self.result = np.full(n, "open", dtype=object)
+        self.result[np.isin(resolved.reason, VOID_REASONS)] = "void"
+        self.reason = np.array(REASONS, dtype=object)[resolved.reason]
+        self.is_live = resolved.matured | resolved.running
+        self.marks = np.full((n, 2), np.nan)
+        self.decided = np.full(n, -1, dtype=np.int64)
+        self.value = np.full(n, np.nan)
+        self.direction = np.full(n, "", dtype=object)
+        self.tie = np.zeros(n, dtype=bool)
+        self.alternates = {name: np.full(n, NONE, dtype=np.int64) for name in alternate_names()}
+
+    def leave(self, rows: BoolArray, result: str, reason: object) -> None:
+        """Keep calls from being judged, with the reason."""
+        self.result[rows] = result
+        self.reason[rows] = reason[rows] if isinstance(reason, np.ndarray) else reason
+        self.is_live[rows] = False
+
+    def settle(self, kind: Kind, rows: IntArray) -> None:
+        """Judge calls of one kind and keep what is final."""
+        windows = self.resolved.windows.take(rows)
+        marks = self._bind(kind, rows, windows)
+        self.marks[rows, : marks.shape[1]] = marks
+        here = np.where(windows.additive, 0.0, 1.0)
+        if kind.direction == "by level":
+            self.direction[rows] = np.where(marks[:, 0] > here, "up", "down")
+        sound = self._sound(kind, rows, windows, marks)
+        rows, windows, marks = rows[sound], windows.take(sound), marks[sound]
+        judged = self._judge(kind.kernel, windows, marks)
+        matured = self.resolved.matured[rows]
+        early = {"hit": judged.hit, "miss": ~judged.hit}.get(kind.kernel.early or "")
+        final = matured if early is None else matured | early
+        self._keep(rows[final], judged, final)
+        self._keep_alternates(kind, rows[matured], windows.take(matured), marks[matured])
+
+    def _bind(self, kind: Kind, rows: IntArray, windows: Windows) -> FloatArray:
+        return bind(
+            kind,
+            self.claims.values[rows],
+            self.claims.units[rows],
+            reference=self.market.bars.close[windows.reference],
+            level_factor=self.level_factor[rows],
+            additive=windows.additive,
+        )
+
+    def _judge(self, kernel: Kernel, windows: Windows, marks: FloatArray) -> Judged:
+        return kernel.judge(self.market.bars, windows, marks, self.rules.tolerance)
+
+    def _sound(
+        self, kind: Kind, rows: IntArray, windows: Windows, marks: FloatArray
+    ) -> BoolArray:
+        """Void what has no meaning at its reference, and return what remains."""
+        reference = self.market.bars.close[windows.reference]
+        sunk = ~windows.additive & (reference <= 0)
+        self.leave_rows(rows[sunk], "the reference price is not above zero")
+        here = np.where(windows.additive, 0.0, 1.0)
+        size = np.where(windows.additive, np.abs(reference), 1.0)
+        at_level = np.abs(marks[:, 0] - here) <= self.rules.tolerance * size
+        at_level &= kind.direction == "by level"
+        self.leave_rows(rows[at_level], "the level is the reference price")
+        return ~(sunk | at_level)
+
+    def leave_rows(self, rows: IntArray, reason: str) -> None:
+        """Void calls by row number."""
+        chosen = np.zeros(len(self.result), dtype=bool)
+        chosen[rows] = True
+        if len(rows):
+            self.leave(chosen, "void", reason)
+
+    def _keep(self, rows: IntArray, judged: Judged, final: BoolArray) -> None:
+        self.result[rows] = np.where(judged.hit[final], "hit", "miss")
+        self.reason[rows] = ""
+        self.decided[rows] = judged.decided[final]
+        self.value[rows] = judged.value[final]
+        self.tie[rows] = judged.tie[final]
+
+    def _keep_alternates(
+        self, kind: Kind, rows: IntArray, windows: Windows, marks: FloatArray
+    ) -> None:
+        for name, kernel in kind.alternates.items():
+            self.alternates[name][rows] = self._judge(kernel, windows, marks).hit
+        has_before = np.flatnonzero(windows.reference > windows.floor)
+        before = windows.take(has_before)
+        before = replace(before, reference=before.reference - 1)
+        marks_before = self._bind(kind, rows[has_before], before)
+        hit = self._judge(kind.kernel, before, marks_before).hit
+        self.alternates[CLOSE_BEFORE][rows[has_before]] = hit
+
+    def outcomes(self) -> Outcomes:
+        """Return the filled arrays."""
+        return Outcomes(
+            result=self.result,
+            reason=self.reason,
+            resolved=self.resolved,
+            marks=self.marks,
+            decided=self.decided,
+            value=self.value,
+            direction=self.direction,
+            alternates=self.alternates,
+            tie=self.tie,
+        )
