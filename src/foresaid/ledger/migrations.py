@@ -57,7 +57,7 @@ CREATE TABLE load (
 CREATE TABLE codebook (
   digest TEXT PRIMARY KEY CHECK (length(digest) = 64),
   name TEXT NOT NULL,
-  body TEXT NOT NULL,
+  source TEXT NOT NULL,
   first_used_at TEXT NOT NULL
 ) STRICT;
 

@@ -194,6 +194,6 @@ def outcomes(ledger: Ledger, settlement: int) -> pd.DataFrame:
     return frame.drop(columns="settlement")
 
 
-def codebook_body(ledger: Ledger, digest: str) -> str:
+def codebook_source(ledger: Ledger, digest: str) -> str:
     """Return the text of a codebook that was used on this ledger."""
-    return str(ledger.scalar("SELECT body FROM codebook WHERE digest = ?", (digest,)))
+    return str(ledger.scalar("SELECT source FROM codebook WHERE digest = ?", (digest,)))

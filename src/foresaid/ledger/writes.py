@@ -10,7 +10,7 @@ if TYPE_CHECKING:
 
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
-    from foresaid.model.records import Action, Forecaster, Instrument
+    from foresaid.model.records import Action, CodedCall, Forecaster, Instrument
 
 
 def add_load(ledger: Ledger, row: Mapping[str, Any]) -> int:
@@ -23,12 +23,12 @@ def add_load(ledger: Ledger, row: Mapping[str, Any]) -> int:
     return ledger.insert("load", dict(row))
 
 
-def add_codebook(ledger: Ledger, codebook: Codebook, body: str, *, at: str) -> None:
-    """Keep a codebook, once."""
+def add_codebook(ledger: Ledger, codebook: Codebook, *, at: str) -> None:
+    """Keep a codebook with its text, once."""
     ledger.db.execute(
-        "INSERT INTO codebook (digest, name, body, first_used_at) VALUES (?, ?, ?, ?) "
+        "INSERT INTO codebook (digest, name, source, first_used_at) VALUES (?, ?, ?, ?) "
         "ON CONFLICT DO NOTHING",
-        (codebook.digest, codebook.name, body, at),
+        (codebook.digest, codebook.name, codebook.source, at),
     )
 
 
@@ -83,6 +83,61 @@ def statement_id(ledger: Ledger, ref: str) -> int | None:
     if not ref:
         return None
     return int(ledger.scalar("SELECT id FROM statement WHERE ref = ?", (ref,)))
+
+
+_STATEMENT_FIELDS = (
+    "ref", "said_at", "said_zone", "outlet", "link", "quote", "digest"
+)  # fmt: skip
+_CALL_FIELDS = (
+    "claim_typed", "claim", "not_a_call", "horizon_typed", "horizon", "sessions",
+    "probability_low", "probability_high", "likelihood", "given", "currency",
+    "horizon_class", "specificity_class", "coder", "coded_at", "note",
+)  # fmt: skip
+
+
+def add_calls(
+    ledger: Ledger,
+    rows: Iterable[CodedCall],
+    load: int,
+    *,
+    forecasters: Mapping[str, int],
+    instruments: Mapping[str, int],
+    codebook: str,
+) -> None:
+    """Add statements with their calls; a copy is a statement alone.
+
+    Rows that others copy or revise have to come first.
+    """
+    collections: dict[str, int | None] = {}
+    for row in rows:
+        if row.collection not in collections:
+            collections[row.collection] = collection_id(ledger, row.collection)
+        fields = {name: getattr(row, name) for name in _STATEMENT_FIELDS}
+        statement = ledger.insert(
+            "statement",
+            fields
+            | {
+                "forecaster": forecasters[row.forecaster],
+                "collection": collections[row.collection],
+                "copy_of": statement_id(ledger, row.copy_of),
+                "load": load,
+            },
+        )
+        if row.copy_of:
+            continue
+        fields = {name: getattr(row, name) for name in _CALL_FIELDS}
+        ledger.insert(
+            "call",
+            fields
+            | {
+                "statement": statement,
+                "instrument": instruments.get(row.instrument),
+                "horizon_imputed": int(row.horizon_imputed),
+                "deadline": row.deadline.isoformat() if row.deadline else None,
+                "revises": statement_id(ledger, row.revises),
+                "codebook": codebook,
+            },
+        )
 
 
 def add_settlement(

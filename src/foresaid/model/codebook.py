@@ -8,7 +8,7 @@ from __future__ import annotations
 import hashlib
 import json
 import tomllib
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, field
 from functools import cache, cached_property
 from importlib import resources
 from typing import TYPE_CHECKING, Literal
@@ -102,7 +102,10 @@ class VerdictRules:
 
 @dataclass(frozen=True)
 class Codebook:
-    """Every rule in force, with the digest of its content (not of its layout)."""
+    """Every rule in force, with the digest of its content (not of its layout).
+
+    ``source`` is the text it was read from, which the digest leaves out.
+    """
 
     name: str
     horizon_words: dict[str, HorizonWord]
@@ -118,11 +121,14 @@ class Codebook:
     settlement: SettlementRules
     chance: ChanceRules
     verdict: VerdictRules
+    source: str = field(compare=False, repr=False)
 
     @property
     def canonical(self) -> str:
         """The rules as JSON with sorted keys and no spaces: what the digest covers."""
-        return json.dumps(asdict(self), sort_keys=True, separators=(",", ":"))
+        rules = asdict(self)
+        del rules["source"]
+        return json.dumps(rules, sort_keys=True, separators=(",", ":"))
 
     @cached_property
     def digest(self) -> str:
@@ -167,14 +173,14 @@ def parse_codebook(text: str, *, file: str) -> Codebook:
     except tomllib.TOMLDecodeError as fault:
         raise InputRejected(f"The codebook {file} is not valid TOML: {fault}") from fault
     root = Node(raw, file=file)
-    book = _read(root)
+    book = _read(root, text)
     root.finish()
     if root.issues:
         raise InputRejected(f"The codebook {file} was refused.", root.issues)
     return book
 
 
-def _read(root: Node) -> Codebook:
+def _read(root: Node, source: str) -> Codebook:
     root.choice("version", (1,))
     classes = root.table("horizon_classes")
     likelihood = root.table("likelihood")
@@ -203,6 +209,7 @@ def _read(root: Node) -> Codebook:
         settlement=_settlement(root.table("settlement")),
         chance=_chance(root.table("chance")),
         verdict=_verdict(root.table("verdict")),
+        source=source,
     )
 
 

@@ -67,6 +67,47 @@ class Action:
     into: str = ""
 
 
+@dataclass(frozen=True, slots=True)
+class CodedCall:
+    """One statement as read: a call in canonical form, or a reason why it is none.
+
+    ``deadline`` is a calendar date, or None where the horizon counts ``sessions``. A stated
+    probability has ``probability_low == probability_high``; a likelihood word spans a band.
+    ``digest`` is the SHA-256 of the row as typed, by which a row is known again.
+    """
+
+    ref: str
+    forecaster: str
+    said_at: str
+    said_zone: str
+    instrument: str
+    claim_typed: str
+    claim: str
+    not_a_call: str
+    horizon_typed: str
+    horizon: str
+    horizon_imputed: bool
+    deadline: date | None
+    sessions: int | None
+    probability_low: float | None
+    probability_high: float | None
+    likelihood: str
+    given: str
+    currency: str
+    horizon_class: str
+    specificity_class: str
+    quote: str
+    outlet: str
+    link: str
+    collection: str
+    copy_of: str
+    coder: str
+    coded_at: str
+    revises: str
+    note: str
+    digest: str
+
+
 @dataclass(frozen=True)
 class Parsed(Generic[Row]):
     """What came out of one file: good rows with their lines, faults, and remarks.

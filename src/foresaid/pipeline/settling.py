@@ -88,7 +88,7 @@ def settle_ledger(ledger: Ledger, codebook: Codebook, *, as_of: date, at: str) -
     )
     rows = list(zip(*(table[name].tolist() for name in table.columns), strict=True))
     with ledger.writing():
-        writes.add_codebook(ledger, codebook, codebook.canonical, at=at)
+        writes.add_codebook(ledger, codebook, at=at)
         writes.add_settlement(ledger, header | {"settled_at": at}, rows)
     return _summary(table, as_of, is_new=True)
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -57,7 +58,7 @@ def load_world(ledger: Ledger, codebook: Codebook, *, as_of: date, vintage: int)
     bounds = np.flatnonzero(np.diff(rows.instrument, prepend=-1, append=-1))
     histories = {}
     symbols = {key: symbol for symbol, (key, _) in known.items()}
-    for begin, end in zip(bounds[:-1], bounds[1:], strict=True):
+    for begin, end in pairwise(bounds):
         own = slice(int(begin), int(end))
         histories[symbols[int(rows.instrument[begin])]] = PriceHistory(
             rows.day[own], rows.high[own], rows.low[own], rows.close[own]

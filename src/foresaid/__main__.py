@@ -1,0 +1,5 @@
+"""``python -m foresaid``."""
+
+from foresaid.cli.main import main
+
+main()

@@ -1,0 +1,1 @@
+"""Thin commands: arguments in, exit status out, no arithmetic."""

@@ -1,0 +1,128 @@
+"""Commands that read a ledger: calls, trace, score."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+from foresaid.cli.console import Format, console, give_out, say, write
+from foresaid.cli.options import LedgerPath, OutputFormat
+
+NOTHING_SETTLED = "Nothing is settled yet, so outcomes are empty. Run: foresaid settle"
+
+
+def calls(
+    ledger: LedgerPath,
+    forecaster: Annotated[
+        str | None, typer.Option(help="Only this forecaster's calls.")
+    ] = None,
+    instrument: Annotated[
+        str | None, typer.Option(help="Only calls on this instrument.")
+    ] = None,
+    outcome: Annotated[
+        str | None, typer.Option(help="Only hit, miss, open, void or 'not a call'.")
+    ] = None,
+    format_: OutputFormat = Format.table,
+) -> None:
+    """List the calls with their outcomes under the latest settlement.
+
+    Example: foresaid calls --ledger desk.foresaid --outcome open --format csv
+    """
+    from foresaid.ledger.store import Ledger
+    from foresaid.pipeline.listing import CALL_COLUMNS, call_rows
+    from foresaid.report.tables import call_columns, make_table
+
+    wanted = {"forecaster": forecaster, "instrument": instrument, "outcome": outcome}
+    with Ledger.open(ledger) as opened:
+        rows, stale = call_rows(opened, {k: v for k, v in wanted.items() if v is not None})
+    if stale is None:
+        say(NOTHING_SETTLED)
+    _tell_stale(stale or ())
+    if format_ is not Format.table:
+        give_out(rows, CALL_COLUMNS, format_)
+        return
+    console().print(make_table(call_columns(), rows))
+    say(f"{len(rows)} calls.")
+
+
+def trace(
+    ref: Annotated[str, typer.Argument(metavar="REF", help="The call's ref.")],
+    ledger: LedgerPath,
+    format_: OutputFormat = Format.table,
+) -> None:
+    """Show how one call was settled, step by step, to be redone by hand.
+
+    Example: foresaid trace C-0412 --ledger desk.foresaid
+    """
+    from foresaid.ledger.store import Ledger
+    from foresaid.pipeline.tracing import trace_call
+    from foresaid.report.exports import as_json
+    from foresaid.report.traces import trace_rows, trace_text
+
+    with Ledger.open(ledger) as opened:
+        found = trace_call(opened, ref)
+    if format_ is Format.json:
+        write(as_json(vars(found)))
+    elif format_ is Format.csv:
+        give_out(
+            trace_rows(found.steps, found.prices, found.alternates), ["step", "text"], format_
+        )
+    else:
+        width = min(console().width, 110)
+        write(trace_text(found.call, found.steps, found.prices, found.alternates, width=width))
+
+
+def score(
+    ledger: LedgerPath,
+    by: Annotated[
+        str,
+        typer.Option(
+            help="Group by any of forecaster, horizon, specificity, direction, instrument, "
+            "desk, year, with commas; 'all' for one group."
+        ),
+    ] = "forecaster",
+    weighted: Annotated[
+        bool, typer.Option("--weighted", help="Count the codebook's class weights, too.")
+    ] = False,
+    format_: OutputFormat = Format.table,
+) -> None:
+    """Score the settled calls by forecaster and class, against a coin and the base rate.
+
+    Example: foresaid score --ledger desk.foresaid --by forecaster,horizon
+    """
+    keys = [] if by.strip() == "all" else [key.strip() for key in by.split(",") if key.strip()]
+    show_scores(ledger, keys, format_, weighted=weighted)
+
+
+def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) -> None:
+    """Give out the scores of one ledger, with the cautions beside the table."""
+    from foresaid.ledger.store import Ledger
+    from foresaid.pipeline.scoring import score_columns_of, score_ledger
+    from foresaid.report.cautions import CAUTIONS
+    from foresaid.report.tables import SCORE_GUIDE, make_table, score_columns
+
+    with Ledger.open(ledger) as opened:
+        scores = score_ledger(opened, keys, weighted=weighted)
+    _tell_stale(scores.stale)
+    if form is not Format.table:
+        give_out(scores.rows, score_columns_of(keys), form)
+        return
+    screen = console()
+    screen.print(make_table(score_columns(keys, has_weights=weighted), scores.rows))
+    screen.print()
+    for text in (SCORE_GUIDE, *CAUTIONS):
+        screen.print(text)
+
+
+def _tell_stale(parts: tuple[str, ...]) -> None:
+    if parts:
+        say(f"Since the last settlement there are {' and '.join(parts)}. Run: foresaid settle")
+
+
+def add_to(app: typer.Typer) -> None:
+    """Add the commands of this file to the tree."""
+    app.command("calls")(calls)
+    app.command("trace")(trace)
+    app.command("score")(score)

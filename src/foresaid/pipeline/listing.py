@@ -1,0 +1,39 @@
+"""The list of calls, as it is given out."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+from foresaid.pipeline.scoring import listed_calls, stale_parts
+from foresaid.settle.outcomes import alternate_names
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from foresaid.ledger.store import Ledger
+
+CALL_COLUMNS = (
+    "ref", "forecaster", "instrument", "claim", "said_at", "horizon", "horizon_class",
+    "specificity_class", "direction", "probability", "probability_low", "probability_high",
+    "likelihood", "given", "outcome", "reason", "matured", "reference_session",
+    "reference_price", "first_session", "deadline", "sessions", "deadline_session",
+    "decided_session", "decided_price", "move_frac", "move_points", "chance", "chance_model",
+    "chance_windows", "chance_hits", "chance_disjoint", "chance_volatility",
+    "chance_modelled", "flags", *(f"alt_{name}" for name in alternate_names()),
+    "claim_typed", "horizon_typed", "currency", "quote", "outlet", "link", "collection",
+    "coder", "coded_at", "revises", "copies", "note",
+)  # fmt: skip
+
+
+def call_rows(
+    ledger: Ledger, wanted: Mapping[str, str]
+) -> tuple[list[dict[str, Any]], tuple[str, ...] | None]:
+    """Return the calls whose columns equal ``wanted``, and what is newer than the outcomes.
+
+    The second part is None where nothing was settled yet.
+    """
+    table, settlement = listed_calls(ledger)
+    for column, value in wanted.items():
+        table = table[table[column] == value]
+    rows = table[list(CALL_COLUMNS)].to_dict("records")
+    return rows, None if settlement is None else stale_parts(ledger, settlement)

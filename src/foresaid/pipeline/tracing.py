@@ -1,0 +1,322 @@
+"""The trace of one call: everything a stranger needs to settle it again by hand."""
+
+from __future__ import annotations
+
+import json
+from dataclasses import dataclass
+from datetime import date, timedelta
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from foresaid.claims.kernels import Over
+from foresaid.claims.phrases import parse_claim, print_number
+from foresaid.claims.registry import KINDS
+from foresaid.ledger import queries
+from foresaid.model.codebook import parse_codebook
+from foresaid.model.errors import UsageError
+from foresaid.pipeline.scoring import listed_calls
+from foresaid.pipeline.settling import judge
+
+if TYPE_CHECKING:
+    from foresaid.claims.kernels import Bound
+    from foresaid.claims.registry import Kind
+    from foresaid.ledger.store import Ledger
+    from foresaid.model.codebook import Codebook
+    from foresaid.model.records import Instrument
+    from foresaid.pipeline.outcome_rows import Judgement
+
+EPOCH = date(1970, 1, 1)
+
+
+@dataclass(frozen=True)
+class Trace:
+    """A settlement step by step.
+
+    Attributes
+    ----------
+    call : dict
+        The row of ``foresaid calls``.
+    steps : list of (str, str)
+        What is looked at and what it says, in the order of the reasoning.
+    prices : list of dict
+        Every price used: what for, session, the file's numbers, file and SHA-256.
+    alternates : dict
+        Other readings and their results.
+    """
+
+    call: dict[str, Any]
+    steps: list[tuple[str, str]]
+    prices: list[dict[str, Any]]
+    alternates: dict[str, str]
+
+
+def trace_call(ledger: Ledger, ref: str) -> Trace:
+    """Return the trace of one call under the latest settlement.
+
+    Raises
+    ------
+    UsageError
+        If there is no such call, or nothing is settled yet.
+    """
+    table, settlement = listed_calls(ledger)
+    if settlement is None:
+        raise UsageError("Nothing is settled yet. Run: foresaid settle")
+    found = table[table["ref"] == ref]
+    if found.empty:
+        raise UsageError(f"There is no call {ref!r} in this ledger.")
+    row = found.iloc[0].to_dict()
+    if row["result"] is None:
+        raise UsageError(f"{ref} came after the last settlement. Run: foresaid settle")
+    alternates = json.loads(row["alternates"] or "{}")
+    if row["not_a_call"]:
+        return Trace(row, _screened(row), [], {})
+    book = parse_codebook(queries.codebook_source(ledger, settlement.codebook), file="ledger")
+    frame = queries.calls(ledger)
+    frame = frame[frame["ref"] == ref].reset_index(drop=True)
+    judged = judge(ledger, frame, book, as_of=settlement.as_of, vintage=settlement.vintage)
+    teller = _Teller(row, judged, book, settlement)
+    return Trace(row, teller.steps(), teller.prices(ledger), alternates)
+
+
+def _screened(row: dict[str, Any]) -> list[tuple[str, str]]:
+    return [
+        ("statement", f"{row['forecaster']}, {row['said_at']}: {row['quote'] or 'no quote'}"),
+        ("result", f"not a call ({row['not_a_call']}); counted as screened, never scored"),
+    ]
+
+
+class _Teller:
+    """Puts the arrays of one call into words."""
+
+    def __init__(
+        self,
+        row: dict[str, Any],
+        judged: Judgement,
+        book: Codebook,
+        settlement: queries.Settlement,
+    ) -> None:
+        self.row, self.judged, self.book, self.settlement = row, judged, book, settlement
+        self.claim = parse_claim(row["claim"])
+        self.market = judged.world.market
+        self.number = int(judged.calls.times.instrument[0])
+        self.instrument: Instrument = judged.world.instruments[self.number]
+        self.kind: Kind = KINDS[self.claim.kind].in_sense(
+            inverse=self.instrument.sense == "inverse"
+        )
+        self.windows = judged.outcomes.resolved.windows
+
+    def steps(self) -> list[tuple[str, str]]:
+        """Return the reasoning, one line a step."""
+        row = self.row
+        steps = [
+            (
+                "statement",
+                f"{row['forecaster']}, {row['said_at']}: {row['quote'] or 'no quote'}",
+            ),
+            ("source", " ".join(t for t in (row["outlet"], row["link"]) if t) or "none given"),
+            ("claim", f"{row['instrument']} {row['claim']} (typed: {row['claim_typed']})"),
+            ("rule", f"{self.kind.reads}"),
+            ("publication", self._publication()),
+            ("reference", self._reference()),
+            ("horizon", self._horizon()),
+            ("window", self._window()),
+            ("actions", self._actions()),
+            ("threshold", self._threshold()),
+            ("arithmetic", self._arithmetic()),
+            ("result", self._result()),
+            ("chance", self._chance()),
+            ("flags", row["flags"] or "none"),
+            (
+                "settled",
+                f"as of {self.settlement.as_of}, price vintage "
+                f"{self.settlement.vintage}, codebook {self.settlement.codebook}",
+            ),
+        ]
+        return [(name, text) for name, text in steps if text]
+
+    def prices(self, ledger: Ledger) -> list[dict[str, Any]]:
+        """Return the price rows behind the result, as they stand in their files."""
+        wanted = {
+            "reference": self.row["reference_session"],
+            "decided": self.row["decided_session"],
+            "deadline": self.row["deadline_session"],
+        }
+        if self._extreme_session() is not None:
+            wanted["nearest in the window"] = self._extreme_session()
+        found = []
+        for use, session in wanted.items():
+            source = session and queries.price_source(
+                ledger, self.row["instrument"], session, vintage=self.settlement.vintage
+            )
+            if source:
+                found.append({"use": use} | source)
+        return found
+
+    def _publication(self) -> str:
+        times = self.judged.calls.times
+        day, minute = _day(int(times.said_day[0])), float(times.said_minute[0])
+        zone = self.instrument.zone or "the time as written (the instrument has no zone)"
+        if minute < 0:
+            rule = self.book.settlement.day_only.replace("-", " that day's ")
+            return f"{day:%A} {day}, no time given: counts as {rule}"
+        venue = self.market.venue
+        opens, closes = _clock(venue.opens[self.number]), _clock(venue.closes[self.number])
+        hours = f"opens {opens}, closes {closes}"
+        if not venue.hours_known[self.number]:
+            hours += " (hours assumed by the codebook)"
+        return f"{self.row['said_at']} is {day:%A} {day} {_clock(minute)} in {zone}; {hours}"
+
+    def _reference(self) -> str:
+        if self.row["reference_session"] is None:
+            return "no session yet whose close is at or after publication"
+        return (
+            f"{self.row['reference_session']}, the first session whose close is at or after "
+            f"publication: {_price(self.row['reference_price'])}"
+        )
+
+    def _horizon(self) -> str:
+        row = self.row
+        said = _day(int(self.judged.calls.times.said_day[0]))
+        typed = row["horizon_typed"] or "nothing said"
+        if row["sessions"]:
+            return f"{typed}: {row['sessions']} sessions after the reference session"
+        text = f"{typed}: from {said} to {row['deadline']}"
+        return text + (" (imputed by the codebook)" if row["horizon_imputed"] else "")
+
+    def _window(self) -> str:
+        row = self.row
+        if row["first_session"] is None:
+            return ""
+        until = row["deadline_session"] or "the last session known"
+        rolled = ""
+        if (
+            row["deadline"]
+            and row["deadline_session"]
+            and row["deadline"] != row["deadline_session"]
+        ):
+            rolled = f", rolled back from {row['deadline']}, which is no session"
+        n = int(self.windows.last[0] - self.windows.first[0]) + 1
+        if self._over is Over.END:
+            return f"judged on the close of {until}{rolled}"
+        return f"{row['first_session']} through {until}{rolled}: {n} sessions"
+
+    @property
+    def _over(self) -> Over | None:
+        bounds = self.kind.kernel.bounds
+        return bounds[0].over if bounds else None
+
+    def _actions(self) -> str:
+        steps = self.market.steps[self.number]
+        if not len(steps.day) or self.row["reference_session"] is None:
+            return "no split or rebase from statement to deadline"
+        said = int(self.judged.calls.times.said_day[0])
+        end = int(self.market.bars.day[self.windows.last[0]])
+        inside = [i for i, day in enumerate(steps.day.tolist()) if said < day <= end]
+        if not inside:
+            return "no split or rebase from statement to deadline"
+        texts = [
+            f"{_day(int(steps.day[i]))}: prices of the day times "
+            f"{_price(steps.product[i + 1] / steps.product[i])} to compare with before"
+            for i in inside
+        ]
+        return "; ".join(texts)
+
+    def _threshold(self) -> str:
+        marks = self.judged.outcomes.marks[0]
+        if self.row["reference_price"] is None or not np.isfinite(marks[0]):
+            return ""
+        texts = [self._mark_text(i, float(marks[i])) for i in range(len(self.kind.marks))]
+        return "; ".join(texts)
+
+    def _mark_text(self, index: int, mark: float) -> str:
+        reference = float(self.row["reference_price"])
+        if bool(self.windows.additive[0]):
+            return f"{_price(reference)} {mark:+.10g} = {_price(reference + mark)}"
+        price = reference * mark
+        if self.kind.marks[index].role == "level":
+            return f"{_price(price)}, which is {mark:.6f} times the reference"
+        return f"{_price(reference)} x {mark:.10g} = {_price(price)}"
+
+    def _arithmetic(self) -> str:
+        row = self.row
+        if row["decided_price"] is None:
+            return ""
+        bound = self.kind.kernel.bounds[0] if self.kind.kernel.bounds else None
+        field = self._field_name(bound)
+        factor = self.market.bars.factor
+        scale = float(
+            factor[self.judged.outcomes.decided[0]] / factor[self.windows.reference[0]]
+        )
+        value = float(row["decided_price"])
+        shown = f"{_price(value)}"
+        if abs(scale - 1.0) > 1e-12:
+            shown += f" x {_price(scale)} = {_price(value * scale)}"
+        reference = float(row["reference_price"])
+        move = f"{row['move_points']:+.10g}"
+        if row["move_frac"] is not None:
+            move = f"{100 * row['move_frac']:+.4f} %"
+        return (
+            f"{field} of {row['decided_session']} is {shown}; against the reference "
+            f"{_price(reference)} that is {move}"
+        )
+
+    def _field_name(self, bound: Bound | None) -> str:
+        outcomes = self.judged.outcomes
+        bars, at = self.market.bars, outcomes.decided[0]
+        value = outcomes.value[0]
+        if bound is None or value == bars.close[at]:
+            return "the close"
+        return "the high" if value == bars.high[at] else "the low"
+
+    def _extreme_session(self) -> str | None:
+        """Return the session of the nearest approach of a path that never got there."""
+        bounds = self.kind.kernel.bounds
+        if self._over is not Over.ANY or self.row["result"] != "miss" or len(bounds) != 1:
+            return None
+        up = self.judged.outcomes.marks[0][0] > (0.0 if self.windows.additive[0] else 1.0)
+        up = bounds[0].side > 0 or (bounds[0].side == 0 and bool(up))
+        own = slice(int(self.windows.first[0]), int(self.windows.last[0]) + 1)
+        bars = self.market.bars
+        field = bars.close
+        if "RANGE" in bounds[0].on.name:
+            field = bars.high if up else bars.low
+        at = own.start + int(np.argmax(field[own]) if up else np.argmin(field[own]))
+        return _day(int(bars.day[at])).isoformat()
+
+    def _result(self) -> str:
+        row = self.row
+        return row["result"] + (f": {row['reason']}" if row["reason"] else "")
+
+    def _chance(self) -> str:
+        row = self.row
+        counted = (
+            f"the same claim came true from {row['chance_hits']} of {row['chance_windows']} "
+            f"earlier starts whose windows had ended before publication "
+            f"({row['chance_disjoint']} of them would not overlap)"
+        )
+        if row["chance"] is None:
+            return "none: " + ("too little history" if row["result"] != "void" else "void")
+        chance = f"{row['chance']:.6g}"
+        if row["chance_model"] == "history":
+            return f"{chance}: {counted}"
+        model = (
+            f"a driftless walk with a daily deviation of {row['chance_volatility']:.6g} gives "
+            f"{row['chance_modelled']:.6g}"
+        )
+        if row["chance_model"] == "volatility":
+            return f"{chance}: no earlier window; {model}"
+        weight = row["chance_disjoint"] / self.book.chance.enough_windows
+        return f"{chance}: {counted}; {model}; weight {weight:.3g} on the first"
+
+
+def _day(number: int) -> date:
+    return EPOCH + timedelta(days=number)
+
+
+def _clock(minutes: float) -> str:
+    return f"{int(minutes) // 60:02d}:{int(minutes) % 60:02d}"
+
+
+def _price(value: float) -> str:
+    return print_number(float(f"{value:.12g}"))

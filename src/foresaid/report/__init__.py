@@ -1,0 +1,1 @@
+"""Results as text: tables for the screen, CSV and JSON for scripts."""

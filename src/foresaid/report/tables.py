@@ -1,0 +1,169 @@
+"""Tables for the screen: few columns, sensible digits, plain words."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+from rich.table import Table
+from rich.text import Text
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Iterable, Sequence
+
+    from rich.console import JustifyMethod
+
+    from foresaid.model.issues import Issue
+
+
+@dataclass(frozen=True)
+class Column:
+    """One column: its heading, how a row becomes its text, and on which side it stands."""
+
+    heading: str
+    text: Callable[[dict[str, Any]], str]
+    justify: JustifyMethod = "right"
+
+
+def make_table(columns: Sequence[Column], rows: Iterable[dict[str, Any]]) -> Table:
+    """Return a ruled table; text from the ledger is shown as it is, never as markup."""
+    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
+    for column in columns:
+        table.add_column(column.heading, justify=column.justify, overflow="fold")
+    for row in rows:
+        table.add_row(*(Text(column.text(row)) for column in columns))
+    return table
+
+
+def fraction(value: float | None, *, digits: int = 0) -> str:
+    """Return a fraction as a percentage, a dash for None.
+
+    Examples
+    --------
+    >>> fraction(0.6178), fraction(None)
+    ('62 %', '–')
+    """
+    return "–" if value is None else f"{100 * value:.{digits}f} %"
+
+
+def decimal(value: float | None, *, digits: int = 3) -> str:
+    """Return a number with fixed digits, a dash for None."""
+    return "–" if value is None else f"{value:.{digits}f}"
+
+
+def p_value(value: float | None) -> str:
+    """Return a p-value with two significant digits.
+
+    Examples
+    --------
+    >>> p_value(0.0312), p_value(3e-9), p_value(0.62)
+    ('0.031', '< 0.0001', '0.62')
+    """
+    if value is None:
+        return "–"
+    if value < 1e-4:
+        return "< 0.0001"
+    digits = 2 if value >= 0.1 else 3 if value >= 0.01 else 4
+    return f"{value:.{digits}f}"
+
+
+def _interval(row: dict[str, Any]) -> str:
+    if row["hit_rate"] is None:
+        return "–"
+    low, high = 100 * row["hit_low"], 100 * row["hit_high"]
+    return f"{100 * row['hit_rate']:.0f} % ({low:.0f} to {high:.0f})"
+
+
+def _by_chance(row: dict[str, Any]) -> str:
+    if row["expected_hits"] is None:
+        return "–"
+    expected = f"{row['expected_hits']:.1f}"
+    return expected if row["n_base"] == row["n"] else f"{expected} of {row['n_base']}"
+
+
+def _excess(row: dict[str, Any]) -> str:
+    return "–" if row["excess"] is None else f"{row['excess']:+.1f}"
+
+
+def _unscored(row: dict[str, Any]) -> str:
+    """Return the calls outside the rate: open, void, settled early."""
+    return f"{row['open']}/{row['void']}/{row['early']}"
+
+
+def _imputed(row: dict[str, Any]) -> str:
+    return f"{row['imputed_hits']} of {row['imputed_n']}" if row["imputed_n"] else "–"
+
+
+def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
+    """Return the columns of the score table for groups by ``keys``."""
+
+    def key_text(key: str) -> Callable[[dict[str, Any]], str]:
+        return lambda row: str(row[key] or "–")
+
+    columns = [Column(key, key_text(key), "left") for key in keys]
+    columns += [
+        Column("right", lambda row: f"{row['hits']} of {row['n']}"),
+        Column("rate (95 %)", _interval),
+        Column("by chance", _by_chance),
+        Column("excess", _excess),
+        Column("p coin", lambda row: p_value(row["p_coin"])),
+        Column("p base", lambda row: p_value(row["p_base"])),
+        Column("apart", lambda row: str(row["n_effective"])),
+        Column("Brier", lambda row: decimal(row["brier"])),
+        Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),
+        Column("open/void/early", _unscored),
+        Column("no call", lambda row: str(row["not_a_call"] or "–")),
+        Column("undated", _imputed),
+    ]
+    if has_weights:
+        columns.append(Column("weighted", lambda row: fraction(row["weighted_hit_rate"])))
+    columns.append(Column("verdict", lambda row: row["verdict"], "left"))
+    return columns
+
+
+SCORE_GUIDE = (
+    "right: calls that came right, of all that matured with a stated date. by chance: how many "
+    "would have with no skill, from the instrument's own past. p: chance of doing as well or "
+    "better by luck. apart: windows that do not overlap. undated: calls without a stated date, "
+    "kept out of all other columns. --format csv or json has every figure in full."
+)
+
+
+def call_columns() -> list[Column]:
+    """Return the columns of the list of calls."""
+
+    def text(name: str) -> Callable[[dict[str, Any]], str]:
+        return lambda row: str(row[name] or "–")
+
+    return [
+        Column("ref", text("ref"), "left"),
+        Column("forecaster", text("forecaster"), "left"),
+        Column("said", lambda row: row["said_at"][:10], "left"),
+        Column("instrument", text("instrument"), "left"),
+        Column("claim", text("claim"), "left"),
+        Column("horizon", text("horizon"), "left"),
+        Column("outcome", lambda row: row["outcome"] or "not settled", "left"),
+        Column("decided", text("decided_session"), "left"),
+        Column("chance", lambda row: fraction(row["chance"])),
+        Column("why", text("reason"), "left"),
+    ]
+
+
+def issue_lines(issues: Iterable[Issue]) -> list[str]:
+    """Return one line an issue: where, what, the value, what to do."""
+    lines = []
+    for issue in issues:
+        where = ", ".join(
+            part
+            for part in (
+                issue.file,
+                f"line {issue.line}" if issue.line is not None else "",
+                issue.column or "",
+            )
+            if part
+        )
+        value = f" [{issue.value}]" if issue.value else ""
+        hint = f" {issue.hint}" if issue.hint else ""
+        prefix = "note: " if issue.severity == "note" else ""
+        lines.append(f"{prefix}{where}: {issue.message}{value}.{hint}")
+    return lines
