@@ -94,6 +94,12 @@ class Kernel(ABC):
     ) -> Judged:
         """Judge window ``i`` against its own marks, ``marks`` of shape (n, n_marks)."""
 
+    def hits(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> BoolArray:
+        """Return only whether each claim came true, which may cost less than ``judge``."""
+        return self.judge(bars, windows, marks, tolerance).hit
+
     def outcomes(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
     ) -> BoolArray:
@@ -113,11 +119,11 @@ class Kernel(ABC):
         ndarray of bool, shape (m, n)
             Row ``j`` is the outcome of claim ``j`` at each window.
         """
+        shape = (len(windows), marks.shape[1])
         rows = [
-            self.judge(bars, windows, np.broadcast_to(row, (len(windows), len(row))), tolerance)
-            for row in marks
+            self.hits(bars, windows, np.broadcast_to(row, shape), tolerance) for row in marks
         ]
-        return np.array([row.hit for row in rows]).reshape(len(marks), len(windows))
+        return np.array(rows, dtype=bool).reshape(len(marks), len(windows))
 
 
 @dataclass(frozen=True)
@@ -136,7 +142,7 @@ class BoundKernel(Kernel):
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
     ) -> Judged:
         """Judge window ``i`` against its own marks; see ``Kernel.judge``."""
-        reference = bars.close[windows.reference]
+        reference = bars.close.take(windows.reference)
         judged = [
             _judge_bound(
                 bound, bars, windows, _limits(bound, reference, windows, marks, tolerance)
@@ -144,6 +150,18 @@ class BoundKernel(Kernel):
             for bound in self.bounds
         ]
         return judged[0] if len(judged) == 1 else _both(judged)
+
+    def hits(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> BoolArray:
+        """Return only whether each claim came true; see ``Kernel.hits``."""
+        reference = bars.close.take(windows.reference)
+        result: BoolArray | None = None
+        for bound in self.bounds:
+            limits = _limits(bound, reference, windows, marks, tolerance)
+            hit = _hits_of_bound(bound, bars, windows, limits)
+            result = hit if result is None else result & hit
+        return np.ones(len(windows), dtype=bool) if result is None else result
 
     def outcomes(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
@@ -163,35 +181,46 @@ class BoundKernel(Kernel):
 def _sides(bound: Bound, marks: FloatArray, additive: BoolArray | bool) -> IntArray:
     """Return 1 or -1 for each mark; a mark at the reference counts as above it."""
     if bound.side:
-        return np.full(len(marks), bound.side, dtype=np.int64)
+        return np.broadcast_to(np.int64(bound.side), len(marks))
     here = np.where(additive, 0.0, 1.0)
     return np.where(marks >= here, 1, -1).astype(np.int64)
 
 
 @dataclass(frozen=True)
 class _Limits:
-    """A mark as a price, with the slack within which a price equals it."""
+    """A mark as a price, with the slack within which a price equals it.
+
+    ``edge`` is the price moved by the slack, so that one comparison meets the bound.
+    """
 
     side: IntArray
     price: FloatArray
     slack: FloatArray
+    edge: FloatArray
 
-    def take(self, rows: BoolArray | IntArray) -> _Limits:
-        return _Limits(self.side[rows], self.price[rows], self.slack[rows])
+    def take(self, rows: slice | IntArray) -> _Limits:
+        return _Limits(self.side[rows], self.price[rows], self.slack[rows], self.edge[rows])
 
 
 def _limits(
     bound: Bound, reference: FloatArray, windows: Windows, marks: FloatArray, tolerance: float
 ) -> _Limits:
     mark = marks[:, bound.mark]
-    price = np.where(windows.additive, reference + mark, reference * mark)
-    slack = tolerance * np.maximum(np.abs(price), np.abs(reference))
-    return _Limits(_sides(bound, mark, windows.additive), price, slack)
+    price = reference * mark
+    if windows.additive.any():
+        price = np.where(windows.additive, reference + mark, price)
+    slack = np.maximum(np.abs(price), np.abs(reference))
+    slack *= tolerance
+    side = _sides(bound, mark, windows.additive)
+    outward = (bound.side or side) * (1 if bound.strict else -1)
+    edge = price + slack * outward
+    return _Limits(side, price, slack, edge)
 
 
 def _meets(bound: Bound, side: int, value: FloatArray, limits: _Limits) -> BoolArray:
-    gap = (value - limits.price) * side
-    return gap > limits.slack if bound.strict else gap >= -limits.slack
+    if side > 0:
+        return value > limits.edge if bound.strict else value >= limits.edge
+    return value < limits.edge if bound.strict else value <= limits.edge
 
 
 def _field(bars: Bars, bound: Bound, side: int) -> FloatArray:
@@ -202,16 +231,24 @@ def _field(bars: Bars, bound: Bound, side: int) -> FloatArray:
     return bars.high if wants_high else bars.low
 
 
+def _hits_of_bound(bound: Bound, bars: Bars, windows: Windows, limits: _Limits) -> BoolArray:
+    hit = np.zeros(len(windows), dtype=bool)
+    for side in (bound.side,) if bound.side else (1, -1):
+        rows = slice(None) if bound.side else np.flatnonzero(limits.side == side)
+        own, prices = windows.take(rows), _field(bars, bound, side)
+        hit[rows] = _meets(bound, side, _measure(bound, side, prices, own), limits.take(rows))
+    return hit
+
+
 def _judge_bound(bound: Bound, bars: Bars, windows: Windows, limits: _Limits) -> Judged:
     """Judge one bound, each side of it apart."""
-    sides = np.unique(limits.side)
-    if len(sides) == 1:
-        return _judge_side(bound, int(sides[0]), bars, windows, limits)
+    if bound.side:
+        return _judge_side(bound, bound.side, bars, windows, limits)
     n = len(windows)
     merged = Judged(np.zeros(n, bool), np.zeros(n, np.int64), np.zeros(n), np.zeros(n, bool))
-    for side in sides:
+    for side in (1, -1):
         rows = np.flatnonzero(limits.side == side)
-        part = _judge_side(bound, int(side), bars, windows.take(rows), limits.take(rows))
+        part = _judge_side(bound, side, bars, windows.take(rows), limits.take(rows))
         for name in ("hit", "decided", "value", "tie"):
             getattr(merged, name)[rows] = getattr(part, name)
     return merged
@@ -223,21 +260,22 @@ def _judge_side(
     prices = _field(bars, bound, side)
     extreme = _measure(bound, side, prices, windows)
     hit = _meets(bound, side, extreme, limits)
+    tie = np.abs(extreme - limits.price) <= limits.slack if bound.strict else np.zeros_like(hit)
+    if bound.over is Over.END:
+        return Judged(hit, windows.last, extreme, tie)
     decided = windows.last.copy()
-    settled = {Over.ANY: hit, Over.ALL: ~hit}.get(bound.over)
-    if settled is not None and settled.any():
-        rows = np.flatnonzero(settled)
+    rows = np.flatnonzero(hit if bound.over is Over.ANY else ~hit)
+    if len(rows):
         decided[rows] = _first_that_decides(
             bound, side, prices, windows.take(rows), limits.take(rows)
         )
-    tie = np.abs(extreme - limits.price) <= limits.slack if bound.strict else np.zeros_like(hit)
     return Judged(hit, decided, prices[decided], tie)
 
 
 def _measure(bound: Bound, side: int, prices: FloatArray, windows: Windows) -> FloatArray:
     """Return the price that decides a bound: the last, the best or the worst of the window."""
     if bound.over is Over.END:
-        return prices[windows.last]
+        return prices.take(windows.last)
     return extreme_of(
         prices, windows.first, windows.last, largest=(side > 0) == (bound.over is Over.ANY)
     )
@@ -282,14 +320,13 @@ def _first_that_decides(
     seeks_meeting = bound.over is Over.ANY
     largest = (side > 0) == seeks_meeting
     low, high = windows.first.copy(), windows.last.copy()
-    rows = np.flatnonzero(low < high)
-    while len(rows):
-        middle = (low[rows] + high[rows]) // 2
-        extreme = extreme_of(prices, low[rows], middle, largest=largest)
-        inside = _meets(bound, side, extreme, limits.take(rows)) == seeks_meeting
-        high[rows] = np.where(inside, middle, high[rows])
-        low[rows] = np.where(inside, low[rows], middle + 1)
-        rows = rows[low[rows] < high[rows]]
+    # a window that is down to one session stays as it is: the session it holds decides
+    while (low < high).any():
+        middle = (low + high) >> 1
+        extreme = extreme_of(prices, low, middle, largest=largest)
+        inside = _meets(bound, side, extreme, limits) == seeks_meeting
+        high = np.where(inside, middle, high)
+        low = np.where(inside, low, middle + 1)
     return low
 
 
@@ -312,7 +349,7 @@ def _outcomes(
 ) -> BoolArray:
     """Judge every window against every mark of a one-sided bound, in relative prices."""
     side = int(bound.side)
-    reference = bars.close[windows.reference]
+    reference = bars.close.take(windows.reference)
     extreme = _measure(bound, side, _field(bars, bound, side), windows)
     if bool(windows.additive[:1].any()):
         relative, size = extreme - reference, np.abs(reference)

@@ -75,7 +75,7 @@ def nearest(name: str, known: Iterable[str]) -> str:
     >>> nearest("marb", ["MARB", "TESX"])
     'MARB'
     """
-    by_spelling = {}
+    by_spelling: dict[str, str] = {}
     for number, candidate in enumerate(known):
         if number >= _MOST_NAMES:
             break

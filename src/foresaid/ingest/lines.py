@@ -6,19 +6,24 @@ import csv
 import hashlib
 import io
 import re
-from dataclasses import dataclass
-from typing import TYPE_CHECKING, BinaryIO
+from itertools import repeat
+from typing import TYPE_CHECKING, BinaryIO, NamedTuple
 
+from foresaid.ingest.quotes import Fault, Splitter
 from foresaid.model.issues import clip
 
 if TYPE_CHECKING:
-    from collections.abc import Buffer, Callable, Iterator
+    from collections.abc import Callable, Iterator
+
+    from _typeshed import WriteableBuffer
 
 LONGEST_RECORD = 1 << 20
 """Characters that one record may have."""
 
 _STEP = 1 << 20
+_BLOCK = 1 << 18
 _BAD_BYTE = re.compile("[\udc80-\udcff]")
+_SUSPECT = re.compile("[\udc80-\udcff\ufffd]")
 _BOMS = (
     (b"\xef\xbb\xbf", "utf-8-sig"),
     (b"\xff\xfe\x00\x00", "utf-32"),
@@ -32,9 +37,12 @@ class Tap(io.RawIOBase):
     """A file that is hashed and measured while it is read."""
 
     def __init__(
-        self, source: BinaryIO, *, total: int = 0, progress: Callable[[int, int], None] | None = None
+        self,
+        source: BinaryIO,
+        *,
+        total: int = 0,
+        progress: Callable[[int, int], None] | None = None,
     ) -> None:
-        super().__init__()
         self._source, self._total, self._progress = source, total, progress
         self._digest = hashlib.sha256()
         self._done = self._told = 0
@@ -43,7 +51,7 @@ class Tap(io.RawIOBase):
         """Return True."""
         return True
 
-    def readinto(self, buffer: Buffer) -> int:
+    def readinto(self, buffer: WriteableBuffer) -> int:
         """Read into ``buffer`` and return how many bytes came."""
         data = self._source.read(len(memoryview(buffer)))
         memoryview(buffer)[: len(data)] = data
@@ -64,17 +72,7 @@ def encoding_of(head: bytes) -> str:
     return next((name for mark, name in _BOMS if head.startswith(mark)), "utf-8")
 
 
-@dataclass(frozen=True, slots=True)
-class Fault:
-    """Why a record could not be split or trusted."""
-
-    code: str
-    message: str
-    hint: str
-
-
-@dataclass(frozen=True, slots=True)
-class Record:
+class Record(NamedTuple):
     """One row: the line it starts on, its cells, and what is wrong with its text."""
 
     line: int
@@ -85,40 +83,87 @@ class Record:
 class Lines:
     """The physical lines of a text stream, counted from 1; lines can be given back.
 
-    A line longer than the limit comes back cut to one character more than the limit.
+    A line longer than the limit comes back cut, and still longer than the limit.
     """
 
     def __init__(self, stream: io.TextIOBase) -> None:
         self._stream = stream
         self._number = 0
-        self._returned: list[tuple[int, str]] = []
+        self._pending: list[tuple[int, str]] = []
 
     def __iter__(self) -> Iterator[tuple[int, str]]:
         """Yield line number and text without its line end."""
         while (line := self.take()) is not None:
             yield line
 
+    @property
+    def has_pending(self) -> bool:
+        """Whether lines that were read from the stream wait to be taken."""
+        return bool(self._pending)
+
     def take(self) -> tuple[int, str] | None:
         """Return the next line, None at the end."""
-        if self._returned:
-            return self._returned.pop()
-        text = self._stream.readline(LONGEST_RECORD + 1)
-        if not text:
-            return None
-        self._number += 1
-        if text.endswith("\n"):
-            return self._number, text[:-1]
-        if len(text) > LONGEST_RECORD:
-            self._skip_rest()
-        return self._number, text
+        if not self._pending:
+            block = self._block()
+            self._hold(block.removesuffix("\n").split("\n") if block else [])
+        return self._pending.pop() if self._pending else None
 
     def give_back(self, lines: list[tuple[int, str]]) -> None:
         """Put lines back so that they come next, in the same order."""
-        self._returned += reversed(lines)
+        self._pending += reversed(lines)
+
+    def take_plain(self, delimiter: str, width: int) -> tuple[int, list[str]] | None:
+        """Return a whole block of well-formed rows, None where rows must be read singly.
+
+        Returns
+        -------
+        tuple of int and list of str, or None
+            The number of the first line, and all cells row after row.
+        """
+        if self._pending:
+            return None
+        text = self._block()
+        block = text.removesuffix("\n")
+        lines = block.split("\n")
+        if not _is_plain(block, delimiter) or set(map(str.count, lines, repeat(delimiter))) != {
+            width - 1
+        }:
+            self._hold(lines if text else [])
+            return None
+        first = self._number + 1
+        self._number += len(lines)
+        return first, block.replace("\n", delimiter).split(delimiter)
+
+    def _hold(self, texts: list[str]) -> None:
+        """Keep lines for ``take``."""
+        first = self._number + 1
+        self._number += len(texts)
+        self._pending = list(zip(range(first, self._number + 1), texts, strict=True))[::-1]
+
+    def _block(self) -> str:
+        """Return some whole lines with their ends; empty at the end of the file."""
+        text = self._stream.read(_BLOCK)
+        if text and not text.endswith("\n"):
+            rest = self._stream.readline(LONGEST_RECORD + 1)
+            text += rest
+            if len(rest) > LONGEST_RECORD and not rest.endswith("\n"):
+                self._skip_rest()
+        return text
 
     def _skip_rest(self) -> None:
         while (rest := self._stream.readline(LONGEST_RECORD)) and not rest.endswith("\n"):
             pass
+
+
+def _is_plain(block: str, delimiter: str) -> bool:
+    """Return whether lines are rows, cells are text and no row may be blank."""
+    if '"' in block or "\0" in block or len(block) > LONGEST_RECORD:
+        return False
+    if not block or block[0] in " \t" + delimiter:
+        return False
+    if any("\n" + mark in block for mark in {" ", "\t", delimiter}):
+        return False
+    return block.isascii() or not _SUSPECT.search(block)
 
 
 def records(lines: Lines, delimiter: str, *, replaced: bool = False) -> Iterator[Record]:
@@ -135,22 +180,18 @@ def records(lines: Lines, delimiter: str, *, replaced: bool = False) -> Iterator
     """
     for line in lines:
         number, text = line
-        if '"' in text:
-            record = _quoted(lines, line, delimiter)
-        elif text and not text.isspace():
-            record = Record(number, text.split(delimiter))
-        else:
-            continue
         if len(text) > LONGEST_RECORD:
             yield Record(number, [text[:80]], _too_long())
-        elif record.fault is None and (fault := _text_fault(record.cells, delimiter, replaced)):
+        elif '"' in text:
+            record = _quoted(lines, line, delimiter)
+            fault = record.fault or _text_fault("".join(record.cells), replaced=replaced)
             yield Record(number, record.cells, fault)
-        else:
-            yield record
+        elif text and not text.isspace():
+            fault = _text_fault(text, replaced=replaced)
+            yield Record(number, text.split(delimiter), fault)
 
 
-def _text_fault(cells: list[str], delimiter: str, replaced: bool) -> Fault | None:  # noqa: FBT001
-    text = delimiter.join(cells)
+def _text_fault(text: str, *, replaced: bool) -> Fault | None:
     if "\0" in text:
         hint = "Save the file as CSV in UTF-8."
         return Fault("nul-byte", "the row holds a NUL byte: this is no plain text", hint)
@@ -159,7 +200,8 @@ def _text_fault(cells: list[str], delimiter: str, replaced: bool) -> Fault | Non
     bad = _BAD_BYTE.search(text)
     if bad is not None:
         before = clip(text[max(bad.start() - 20, 0) : bad.start()])
-        message = f"byte 0x{ord(bad[0]) - 0xDC00:02X} after `{before}` is not UTF-8"
+        place = f" after `{before}`" if before else ""
+        message = f"byte 0x{ord(bad[0]) - 0xDC00:02X}{place} is not UTF-8"
         return Fault("bad-encoding", message, "Save the file as CSV in UTF-8.")
     if replaced and "\ufffd" in text:
         message = "some bytes of the row stand for no letter"
@@ -176,10 +218,10 @@ def _too_long() -> Fault:
 def _quoted(lines: Lines, line: tuple[int, str], delimiter: str) -> Record:
     """Return the record that starts on a line with a quote in it."""
     number, text = line
-    if len(text) > LONGEST_RECORD:
-        return Record(number, [])
     try:
-        cells = next(csv.reader([text], delimiter=delimiter, skipinitialspace=True, strict=True))
+        cells = next(
+            csv.reader([text], delimiter=delimiter, skipinitialspace=True, strict=True)
+        )
     except csv.Error:
         return _spanning(lines, line, delimiter)
     return Record(number, cells)
@@ -191,92 +233,16 @@ def _spanning(lines: Lines, line: tuple[int, str], delimiter: str) -> Record:
     Where the quotes do not work out, the first line alone is at fault and the others are
     given back, so that one stray quote does not swallow the rest of the file.
     """
-    splitter, size, more = _Splitter(delimiter), 0, []
-    current: tuple[int, str] | None = line
-    while current is not None and size <= LONGEST_RECORD:
-        size += len(current[1]) + 1
-        if current is not line:
-            more.append(current)
-        if splitter.feed(current[1]):
+    splitter, more = Splitter(delimiter), list[tuple[int, str]]()
+    size, current = len(line[1]), line
+    while size <= LONGEST_RECORD and not splitter.feed(current[1]):
+        following = lines.take()
+        if following is None:
             break
-        current = lines.take()
+        more.append(following)
+        size += len(following[1]) + 1
+        current = following
     if splitter.is_done:
         return Record(line[0], splitter.cells)
-    if current is not None and size > LONGEST_RECORD and current not in more[-1:]:
-        more.append(current)
     lines.give_back(more)
-    return Record(line[0], line[1].split(delimiter), splitter.fault(line[0], current))
-
-
-class _Splitter:
-    """Cells of one record, fed line by line; knows whether a quote is open."""
-
-    def __init__(self, delimiter: str) -> None:
-        self.cells: list[str] = []
-        self.is_done = False
-        self.stray = ""
-        self._delimiter = delimiter
-        self._open: list[str] | None = None
-
-    def feed(self, text: str) -> bool:
-        """Take one more line; return whether the record ends here, well or badly."""
-        if self._open is not None:
-            self._open.append("\n")
-        position = 0
-        while position <= len(text):
-            position = self._cell(text, position)
-            if self.stray:
-                return True
-            if self._open is not None:
-                return False
-        self.is_done = True
-        return True
-
-    def _cell(self, text: str, start: int) -> int:
-        """Take one cell and return where the next one starts."""
-        if self._open is None:
-            begin = start
-            while begin < len(text) and text[begin] == " ":
-                begin += 1
-            if text[begin : begin + 1] != '"':
-                return self._plain(text, start)
-            self._open, start = [], begin + 1
-        return self._rest_of_quoted(text, start)
-
-    def _plain(self, text: str, start: int) -> int:
-        end = text.find(self._delimiter, start)
-        end = len(text) if end < 0 else end
-        self.cells.append(text[start:end])
-        return end + 1
-
-    def _rest_of_quoted(self, text: str, start: int) -> int:
-        pieces = self._open if self._open is not None else []
-        end = text.find('"', start)
-        while end >= 0 and text[end + 1 : end + 2] == '"':
-            pieces.append(text[start : end + 1])
-            start = end + 2
-            end = text.find('"', start)
-        if end < 0:
-            pieces.append(text[start:])
-            return len(text) + 1
-        pieces.append(text[start:end])
-        return self._close("".join(pieces), text, end + 1)
-
-    def _close(self, cell: str, text: str, start: int) -> int:
-        """Finish a quoted cell: only blanks may stand between its quote and the delimiter."""
-        end = text.find(self._delimiter, start)
-        end = len(text) if end < 0 else end
-        self._open = None
-        self.cells.append(cell)
-        if text[start:end].strip():
-            self.stray = text[start:end]
-        return end + 1
-
-    def fault(self, line: int, last: tuple[int, str] | None) -> Fault:
-        """Return why the record that started on ``line`` could not be finished."""
-        if self.stray:
-            where = f" on line {last[0]}" if last is not None and last[0] != line else ""
-            message = f"a quote is closed{where} and `{clip(self.stray)}` follows it"
-            return Fault("stray-quote", message, 'Double a quote inside a quoted cell: "".')
-        message = f"a quote is opened on line {line} and never closed"
-        return Fault("open-quote", message, "Close it, or take it out.")
+    return Record(line[0], line[1].split(delimiter), splitter.fault(line[0], current[0]))

@@ -49,49 +49,104 @@ class Bars:
     factor: FloatArray
 
     @cached_property
-    def _calendar(self) -> tuple[IntArray, IntArray, IntArray, IntArray]:
-        """A table from (instrument, day) to position, with its own offsets and first days."""
+    def _table(self) -> tuple[IntArray, IntArray, IntArray, IntArray]:
+        """A dense table from day to position, one stretch an instrument.
+
+        A cell holds four times the position of the last session by that day, plus 1 where
+        the day is a session itself, or plus 2 where it is after the last one. Returns the
+        table, and for each instrument what to add to a day to get its cell, and the first
+        and last cell. The first cell stands for all days before the history, the last for
+        all days after it.
+        """
         starts, ends = self.offsets[:-1], self.offsets[1:]
-        filled = ends > starts
+        filled = np.flatnonzero(ends > starts)
         counts = np.ones(len(self.day), dtype=np.int64)
         counts[:-1] = np.diff(self.day)
         counts[ends[filled] - 1] = 1
-        table = np.repeat(np.arange(len(self.day), dtype=np.int64), counts)
-        begins = np.concatenate(([0], np.cumsum(counts)))
-        safe_starts = np.minimum(starts, max(len(self.day) - 1, 0))
-        first_day = self.day[safe_starts] if len(self.day) else np.zeros_like(starts)
-        lengths = begins[ends] - begins[starts]
-        return table, begins[starts], first_day, lengths
+        pads = 2 * np.arange(len(starts))
+        cells = np.concatenate(([0], np.cumsum(counts)))
+        first = cells[starts] + pads
+        last = cells[ends] + pads + 1
+        # half the bytes of an int64 keep twice as much of the table in the cache
+        table = np.empty(cells[-1] + 2 * len(starts), dtype=np.int32)
+        inner = np.ones(len(table), dtype=bool)
+        inner[first] = inner[last] = False
+        sessions = np.repeat(4 * np.arange(len(self.day)), counts)
+        sessions[cells[:-1]] += 1
+        table[inner] = sessions
+        table[first] = 4 * (starts - 1)
+        table[last] = 4 * (ends - 1) + 2
+        shift = np.zeros(len(starts), dtype=np.int64)
+        shift[filled] = first[filled] + 1 - self.day[starts[filled]]
+        return table, shift, first, last
+
+    @cached_property
+    def longest_gap(self) -> int:
+        """The most days from one session to the next in any history, 0 without any."""
+        gaps = np.diff(self.day)
+        inside = np.ones(len(self.day), dtype=bool)
+        inside[self.offsets[:-1][np.diff(self.offsets) > 0]] = False
+        return int(gaps[inside[1:]].max(initial=0))
+
+    @cached_property
+    def last_position(self) -> IntArray:
+        """The position of each last session, before the first where there is none."""
+        return self.offsets[1:] - 1
+
+    @cached_property
+    def last_day(self) -> IntArray:
+        """The day of each instrument's last session, far in the past where it has none."""
+        ends = self.offsets[1:]
+        filled = ends > self.offsets[:-1]
+        result = np.full(len(ends), np.iinfo(np.int32).min, dtype=np.int64)
+        result[filled] = self.day[ends[filled] - 1]
+        return result
+
+    def calendar(self, instrument: IntArray) -> Calendar:
+        """Return the calendars of these instruments, shape (n,), to look days up in."""
+        table, shift, first, last = self._table
+        return Calendar(
+            table, shift.take(instrument), first.take(instrument), last.take(instrument)
+        )
 
     def at_or_before(self, instrument: IntArray, day: IntArray) -> IntArray:
-        """Return the position of the last session on or before each day.
+        """Return the position of the last session on or before each day."""
+        return self.calendar(instrument).look_up(day)[0]
+
+
+@dataclass(frozen=True)
+class Calendar:
+    """The sessions of n instruments, one for each day that will be looked up."""
+
+    table: IntArray
+    shift: IntArray
+    first: IntArray
+    last: IntArray
+
+    def look_up(self, day: IntArray) -> tuple[IntArray, IntArray, BoolArray]:
+        """Return the last session on or before each day.
 
         Parameters
         ----------
-        instrument, day : ndarray of int, shape (n,)
-            Instrument numbers, and days since 1970-01-01.
+        day : ndarray of int, shape (n,)
+            Days since 1970-01-01.
 
         Returns
         -------
-        ndarray of int, shape (n,)
-            ``offsets[instrument] - 1`` where the history begins later or is empty.
+        position : ndarray of int, shape (n,)
+            The position before the first where a history begins later or is empty.
+        is_session : ndarray of int, shape (n,)
+            1 where the day itself is a session, else 0.
+        is_beyond : ndarray of bool, shape (n,)
+            Whether the day is after the last session.
         """
-        table, begin, first_day, length = self._calendar
-        ahead = np.minimum(day - first_day[instrument], length[instrument] - 1)
-        if not len(table):
-            return self.offsets[instrument] - 1
-        where = np.minimum(begin[instrument] + np.maximum(ahead, 0), len(table) - 1)
-        return np.where(ahead < 0, self.offsets[instrument] - 1, table[where])
-
-    def at_or_after(self, instrument: IntArray, day: IntArray) -> IntArray:
-        """Return the position of the first session on or after each day.
-
-        Returns
-        -------
-        ndarray of int, shape (n,)
-            ``offsets[instrument + 1]`` where the history ends earlier.
-        """
-        return self.at_or_before(instrument, day - 1) + 1
+        cell = day + self.shift
+        np.minimum(cell, self.last, out=cell)
+        np.maximum(cell, self.first, out=cell)
+        found = self.table.take(cell).astype(np.int64)
+        flags = found & 3
+        found >>= 2
+        return found, flags & 1, flags > 1
 
 
 @dataclass(frozen=True)

@@ -10,9 +10,7 @@ from functools import cache
 
 from foresaid.model.issues import clip
 
-_ZONE_HINT = (
-    "Write a tz database name such as `Europe/Vienna`, or an offset such as `+01:00`."
-)
+_ZONE_HINT = "Write a tz database name such as `Europe/Vienna`, or an offset such as `+01:00`."
 
 
 @dataclass(frozen=True, slots=True)
@@ -151,7 +149,9 @@ def _nearest_zone(name: str) -> str:
 
 
 def _skipped_time(wall: dt.datetime, name: str) -> CellFault:
-    message = f"the clocks of {name} were put forward on {wall:%Y-%m-%d} and skipped {wall:%H:%M}"
+    message = (
+        f"the clocks of {name} were put forward on {wall:%Y-%m-%d} and skipped {wall:%H:%M}"
+    )
     return CellFault("no-such-time", message, "Mend the time, or give it with its offset.")
 
 

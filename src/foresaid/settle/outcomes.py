@@ -203,7 +203,8 @@ class _Work:
             self.direction[rows] = np.where(marks[:, 0] > here, "up", "down")
         sound = self._sound(kind, rows, windows, marks)
         rows, windows, marks = rows[sound], windows.take(sound), marks[sound]
-        judged = self._judge(kind.kernel, windows, marks)
+        bars, tolerance = self.market.bars, self.rules.tolerance
+        judged = kind.kernel.judge(bars, windows, marks, tolerance)
         matured = self.resolved.matured[rows]
         early = {"hit": judged.hit, "miss": ~judged.hit}.get(kind.kernel.early or "")
         final = matured if early is None else matured | early
@@ -220,8 +221,8 @@ class _Work:
             additive=windows.additive,
         )
 
-    def _judge(self, kernel: Kernel, windows: Windows, marks: FloatArray) -> Judged:
-        return kernel.judge(self.market.bars, windows, marks, self.rules.tolerance)
+    def _hits(self, kernel: Kernel, windows: Windows, marks: FloatArray) -> BoolArray:
+        return kernel.hits(self.market.bars, windows, marks, self.rules.tolerance)
 
     def _sound(
         self, kind: Kind, rows: IntArray, windows: Windows, marks: FloatArray
@@ -255,12 +256,12 @@ class _Work:
         self, kind: Kind, rows: IntArray, windows: Windows, marks: FloatArray
     ) -> None:
         for name, kernel in kind.alternates.items():
-            self.alternates[name][rows] = self._judge(kernel, windows, marks).hit
+            self.alternates[name][rows] = self._hits(kernel, windows, marks)
         has_before = np.flatnonzero(windows.reference > windows.floor)
         before = windows.take(has_before)
         before = replace(before, reference=before.reference - 1)
         marks_before = self._bind(kind, rows[has_before], before)
-        hit = self._judge(kind.kernel, before, marks_before).hit
+        hit = self._hits(kind.kernel, before, marks_before)
         self.alternates[CLOSE_BEFORE][rows[has_before]] = hit
 
     def outcomes(self) -> Outcomes:

@@ -8,7 +8,7 @@ after publication through the deadline session; a deadline that is no session ro
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
@@ -101,74 +101,115 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         Shape (n,).
     """
     bars, number = market.bars, times.instrument
-    reference_day, first_day = publication_days(times, market, rules)
-    floor = bars.offsets[number]
-    end = bars.offsets[number + 1] - 1
-    reference = bars.at_or_after(number, reference_day)
-    first = bars.at_or_after(number, first_day)
+    calendar = bars.calendar(number)
+    reference_day, path_waits = publication_days(times, market, rules)
+    floor = bars.offsets.take(number)
+    # the first session on or after the day, and the first after it
+    by_then, is_session, is_beyond = calendar.look_up(reference_day)
+    reference = by_then + 1 - is_session
+    first = (
+        reference + is_session if path_waits is True else reference + is_session * path_waits
+    )
+    begun = ~is_beyond
+    last, is_due_session, is_due_beyond = calendar.look_up(times.deadline_day)
+    reached = ~is_due_beyond
+    rolled = is_due_session == 0
     dated = times.sessions == 0
-    by_date = bars.at_or_before(number, times.deadline_day)
-    last = np.where(dated, by_date, reference + times.sessions)
-    last_day = bars.day[np.maximum(end, 0)] if len(bars.day) else np.zeros_like(end)
-    reached = _reached(times, market, last_day, dated, last <= end)
-    begun = reference <= end
-    reason = np.full(len(number), FINE, dtype=np.int64)
-    target = np.minimum(last, end)
-    target_day = bars.day[np.maximum(target, 0)] if len(bars.day) else np.zeros_like(end)
-    gap = times.deadline_day - target_day
-    reason[begun & reached & dated & (gap > rules.roll_back_days)] = NO_DEADLINE_PRICE
-    reason[begun & ~reached] = np.where(
-        times.deadline_day[begun & ~reached] > market.as_of_day, RUNS, NO_DEADLINE_PRICE
-    )
-    reason[begun & ~reached & ~dated] = RUNS
-    reason[begun & reached & (last == reference)] = SAME_CLOSE
-    reason[begun & reached & (last < reference)] = EMPTY
-    reason[~begun] = np.where(dated & reached, EMPTY, NO_REFERENCE)[~begun]
-    safe = np.minimum(reference, np.maximum(end, floor))
-    windows = Windows(
-        floor, safe, np.minimum(first, target), target, market.venue.additive[number]
-    )
-    matured = reason == FINE
-    running = begun & ~reached & (first <= end)
-    return Resolved(windows, matured, running, reason, matured & dated & (gap > 0))
+    if is_due_beyond.any():
+        _weekends_may_pass(reached, times, market)
+    if not dated.all():
+        end = bars.last_position[number]
+        last = np.where(dated, last, reference + times.sessions)
+        reached = np.where(dated, reached, last <= end)
+        last = np.minimum(last, end)
+        rolled &= dated
+    sound = (last > reference) & reached & begun
+    reason = np.zeros(len(number), dtype=np.int64)
+    running = np.zeros(len(number), dtype=bool)
+    if bars.longest_gap > rules.roll_back_days:
+        far = np.flatnonzero(rolled & sound)
+        far = far[times.deadline_day[far] - bars.day[last[far]] > rules.roll_back_days]
+        sound[far], reason[far] = False, NO_DEADLINE_PRICE
+    odd = np.flatnonzero(~sound & (reason == FINE))
+    if len(odd):
+        state = _State(
+            begun[odd],
+            reached[odd],
+            dated[odd],
+            last[odd] - reference[odd],
+            times.deadline_day[odd],
+        )
+        reason[odd] = _reasons(state, market)
+        end = bars.last_position[number[odd]]
+        running[odd] = state.begun & ~state.reached & (first[odd] <= end)
+        # positions that mean nothing still have to be positions
+        reference[odd] = np.minimum(reference[odd], np.maximum(end, floor[odd]))
+        first[odd] = np.minimum(first[odd], last[odd])
+    windows = Windows(floor, reference, first, last, market.venue.additive.take(number))
+    return Resolved(windows, sound, running, reason, sound & rolled)
+
+
+@dataclass(frozen=True)
+class _State:
+    """What decides why a call is not fit to be judged on its deadline; arrays (n,)."""
+
+    begun: BoolArray
+    reached: BoolArray
+    dated: BoolArray
+    length: IntArray
+    deadline_day: IntArray
+
+
+def _reasons(state: _State, market: Market) -> IntArray:
+    reason = np.full(len(state.begun), NO_DEADLINE_PRICE, dtype=np.int64)
+    reason[~state.reached & (~state.dated | (state.deadline_day > market.as_of_day))] = RUNS
+    reason[state.reached & (state.length == 0)] = SAME_CLOSE
+    reason[state.reached & (state.length < 0)] = EMPTY
+    reason[~state.begun] = NO_REFERENCE
+    reason[~state.begun & state.dated & state.reached] = EMPTY
+    return reason
 
 
 def publication_days(
     times: CallTimes, market: Market, rules: SettlementRules
-) -> tuple[IntArray, IntArray]:
-    """Return the first day whose close, and the first day whose opening, may follow.
+) -> tuple[IntArray, BoolArray | Literal[True]]:
+    """Return the first day whose close may follow, and whether the path begins after it.
 
     A session is dated by its close; one that opens the evening before closes on its day.
 
     Returns
     -------
-    reference_day, first_day : ndarray of int, shape (n,)
-        The reference is the first session on or after the one, the path begins with the
-        first session on or after the other.
+    reference_day : ndarray of int, shape (n,)
+        The reference is the first session on or after this day.
+    path_waits : ndarray of bool, shape (n,), or True for all
+        Whether the session of that very day had opened at publication, so that the path
+        begins with the next one.
     """
+    timed = times.said_minute >= 0
+    late = rules.day_only == "after-close"
+    if not timed.any():
+        return (times.said_day + 1, np.zeros_like(timed)) if late else (times.said_day, True)
     opens = market.venue.opens[times.instrument]
     closes = market.venue.closes[times.instrument]
-    timed = times.said_minute >= 0
-    after_close = np.where(timed, times.said_minute > closes, rules.day_only == "after-close")
-    before_open = timed & (times.said_minute < opens)
-    overnight = timed & (opens > closes)
-    reference_day = times.said_day + after_close
-    first_day = times.said_day + 1 - before_open + overnight
-    return reference_day, first_day
+    after_close = np.where(timed, times.said_minute > closes, late)
+    before_open = times.said_minute < opens
+    overnight = opens > closes
+    # the day of the first session that opens later, counted from the day of the statement
+    first_day = np.where(timed, 1 - before_open + overnight, 1)
+    return times.said_day + after_close, first_day > after_close
 
 
-def _reached(
-    times: CallTimes, market: Market, last_day: IntArray, dated: BoolArray, known: BoolArray
-) -> BoolArray:
-    """Return whether the deadline session is known.
+def _weekends_may_pass(reached: BoolArray, times: CallTimes, market: Market) -> None:
+    """Mark deadlines as reached that only a weekend parts from the last price.
 
-    Prices up to the deadline are enough; so are prices up to the last weekday before it, once
-    the deadline has passed, where the instrument does not trade at weekends.
+    Once such a deadline has passed, no later price can bring another session before it where
+    the instrument does not trade at weekends.
     """
-    passed = times.deadline_day <= last_day
-    waiting = np.flatnonzero(dated & ~passed & (times.deadline_day <= market.as_of_day))
-    closed = waiting[~market.venue.weekends[times.instrument[waiting]]]
-    after = np.asarray(last_day[closed] + 1, dtype="datetime64[D]")
+    waiting = np.flatnonzero(~reached & (times.deadline_day <= market.as_of_day))
+    number = times.instrument[waiting]
+    has_prices = market.bars.last_position >= market.bars.offsets[:-1]
+    closed = waiting[~market.venue.weekends[number] & has_prices[number]]
+    last_day = market.bars.last_day[times.instrument[closed]]
+    after = np.asarray(last_day + 1, dtype="datetime64[D]")
     until = np.asarray(times.deadline_day[closed] + 1, dtype="datetime64[D]")
-    passed[closed[np.busday_count(after, until) == 0]] = True
-    return np.where(dated, passed, known)
+    reached[closed[np.busday_count(after, until) == 0]] = True
