@@ -15,15 +15,20 @@ from foresaid.claims.conditions import parse_condition
 from foresaid.claims.horizons import Horizon, parse_horizon
 from foresaid.claims.likelihood import Likelihood, parse_likelihood_word
 from foresaid.claims.phrases import parse_claim, print_claim, unit_faults
-from foresaid.ingest.cells import CellFault, parse_date, parse_probability, parse_said_at
+from foresaid.ingest.cells import parse_probability
+from foresaid.ingest.dates import parse_date, parse_said_at
+from foresaid.ingest.faults import nearest
+from foresaid.ingest.rows import RowReader
+from foresaid.ingest.tables import check_columns
 from foresaid.model.issues import Issue, clip
 from foresaid.model.records import CodedCall, Parsed
+from foresaid.model.said import CellFault
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
     from datetime import date
 
-    from foresaid.ingest.readers import RawTable
+    from foresaid.ingest.tables import RawTable
     from foresaid.model.codebook import Codebook
     from foresaid.model.records import Instrument
     from foresaid.model.said import SaidAt
@@ -81,17 +86,42 @@ def parse_calls(table: RawTable, context: CallContext) -> Parsed[CodedCall]:
     """
     rows: list[CodedCall] = []
     lines: list[int] = []
-    issues: list[Issue] = []
+    issues = list(check_columns(table, REQUIRED, OPTIONAL))
+    if any(issue.severity == "error" for issue in issues) or not table.columns:
+        return Parsed((), (), tuple(issues))
     owners, doubled = _owners(table, context)
     issues += doubled
+    doubled_lines = {issue.line for issue in doubled}
     for index, line in enumerate(table.lines):
         reader = _Row(table, index, context, owners)
         row = reader.read()
         issues += reader.issues
-        if row is not None and not any(issue.line == line for issue in doubled):
+        if row is not None and line not in doubled_lines:
             rows.append(row)
             lines.append(line)
-    return Parsed(tuple(rows), tuple(lines), tuple(issues))
+    order, dangling = _referred_first(rows, set(context.owners))
+    for at in dangling:
+        row, line = rows[at], lines[at]
+        other = row.copy_of or row.revises
+        message = f"`{clip(other)}`, which this row names, is not to be had"
+        hint = "It has a fault of its own, or the two name each other."
+        issues.append(Issue("bad-ref", message, table.file, line, "ref", clip(row.ref), hint))
+    return Parsed(tuple(rows[i] for i in order), tuple(lines[i] for i in order), tuple(issues))
+
+
+def _referred_first(rows: list[CodedCall], known: set[str]) -> tuple[list[int], list[int]]:
+    """Return an order in which what a row names comes first, and the rows that have none."""
+    order: list[int] = []
+    waiting = list(range(len(rows)))
+    while waiting:
+        ready = [i for i in waiting if {rows[i].copy_of, rows[i].revises} - {""} <= known]
+        if not ready:
+            return order, waiting
+        order += ready
+        known |= {rows[i].ref for i in ready}
+        chosen = set(ready)
+        waiting = [i for i in waiting if i not in chosen]
+    return order, []
 
 
 def _owners(table: RawTable, context: CallContext) -> tuple[dict[str, str], list[Issue]]:
@@ -99,7 +129,7 @@ def _owners(table: RawTable, context: CallContext) -> tuple[dict[str, str], list
     owners = dict(context.owners)
     first: dict[str, int] = {}
     issues = []
-    refs, names = table.cells.get("ref", []), table.cells.get("forecaster", [])
+    refs, names = table.cells["ref"], table.cells["forecaster"]
     for ref, name, line in zip(refs, names, table.lines, strict=True):
         if ref and ref in first:
             message = f"the ref `{clip(ref)}` stands on line {first[ref]} already"
@@ -112,22 +142,14 @@ def _owners(table: RawTable, context: CallContext) -> tuple[dict[str, str], list
     return owners, issues
 
 
-class _Row:
-    """One row while it is being read; collects its issues."""
+class _Row(RowReader):
+    """One call while it is being read."""
 
     def __init__(
         self, table: RawTable, index: int, context: CallContext, owners: Mapping[str, str]
     ) -> None:
-        self.table, self.index, self.context, self.owners = table, index, context, owners
-        self.issues: list[Issue] = []
-
-    def cell(self, column: str) -> str:
-        cells = self.table.cells.get(column)
-        return cells[self.index] if cells else ""
-
-    def fault(self, column: str, code: str, message: str, hint: str = "") -> None:
-        value, line = clip(self.cell(column)), self.table.lines[self.index]
-        self.issues.append(Issue(code, message, self.table.file, line, column, value, hint))
+        super().__init__(table, index)
+        self.context, self.owners = context, owners
 
     def read(self) -> CodedCall | None:
         """Return the coded call, None when the row has a fault."""
@@ -166,7 +188,12 @@ class _Row:
             revises=revises,
             coded_at=coded_at,
             link=link,
-            **{name: self.cell(name) for name in _PLAIN},
+            currency=self.cell("currency"),
+            quote=self.cell("quote"),
+            outlet=self.cell("outlet"),
+            collection=self.cell("collection"),
+            coder=self.cell("coder"),
+            note=self.cell("note"),
             digest=self._digest(),
         )
 
@@ -203,14 +230,11 @@ class _Row:
     def _known(self, column: str, known: Mapping[str, object]) -> str:
         text = self.cell(column)
         if text not in known:
-            what = "no" if not text else f"an unknown `{clip(text)}` as"
-            close = difflib.get_close_matches(text, known, n=1)
-            hint = (
-                f"The nearest known is `{close[0]}`."
-                if close
-                else (f"Import the {column} first: foresaid import {column}s FILE.")
-            )
-            self.fault(column, f"unknown-{column}", f"there is {what} {column}", hint)
+            what = f"`{clip(text)}` is no known {column}" if text else f"there is no {column}"
+            close = nearest(text, known)
+            hint = f"Import it first: foresaid import {column}s FILE."
+            hint = f"The nearest known is `{close}`." if close else hint
+            self.fault(column, f"unknown-{column}", what, hint)
         return text
 
     def _claim(self) -> Claim | None:
@@ -281,11 +305,12 @@ class _Row:
     def _horizon(self, said_on: date | None, *, needed: bool) -> Horizon | None:
         if said_on is None or not needed:
             return None
-        return self._phrase(
+        horizon: Horizon | None = self._phrase(
             "horizon",
             "bad-horizon",
             lambda text: parse_horizon(text, said=said_on, codebook=self.context.codebook),
         )
+        return horizon
 
     def _given(self, said_on: date | None) -> str:
         if not self.cell("given") or said_on is None:
@@ -318,9 +343,7 @@ class _Row:
         number = parse_probability(text)
         if isinstance(number, float):
             return Likelihood(number, number)
-        if isinstance(number, CellFault) and any(
-            c.isdigit() for c in text.partition(":")[2] or text
-        ):
+        if isinstance(number, CellFault) and text[:1] in "+-.0123456789":
             self._cell_fault("probability", number)
             return None
         word: Likelihood | None = self._phrase(
@@ -399,6 +422,3 @@ class _Row:
         typed = {name: self.cell(name) for name in (*REQUIRED, *OPTIONAL)}
         text = json.dumps(typed, sort_keys=True, separators=(",", ":"), ensure_ascii=False)
         return hashlib.sha256(text.encode("utf-8", "surrogatepass")).hexdigest()
-
-
-_PLAIN = ("currency", "quote", "outlet", "collection", "coder", "note")

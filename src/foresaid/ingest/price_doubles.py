@@ -52,7 +52,8 @@ def double_sessions(draft: Draft, out: BoolArray) -> tuple[list[Finding], BoolAr
     partner[order] = np.where(differs | ~clash[group], first, witness[group])
     clashes = np.zeros(len(out), dtype=np.bool_)
     clashes[order[clash[group]]] = True
-    return [_clashes(draft, clashes, partner), _repeats(draft, repeats, partner)], repeats
+    told = repeats & ~np.isin(draft.row, draft.row[clashes])
+    return [_clashes(draft, clashes, partner), _repeats(draft, told, partner)], repeats
 
 
 def _clashes(draft: Draft, clashes: BoolArray, partner: IntArray) -> Finding:

@@ -2,17 +2,17 @@
 
 from __future__ import annotations
 
-from collections import defaultdict
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
 from foresaid.ingest import calls as calls_file
+from foresaid.ingest.actions import parse_actions
 from foresaid.ingest.prices import parse_prices
 from foresaid.ingest.readers import read_table
-from foresaid.ingest.rejects import write_rejects
-from foresaid.ingest.things import parse_actions, parse_forecasters, parse_instruments
+from foresaid.ingest.rejects import rejected_lines, write_rejects
+from foresaid.ingest.things import parse_forecasters, parse_instruments
 from foresaid.ledger import queries, writes
 from foresaid.model.errors import InputRejected
 from foresaid.model.issues import Issue, clip
@@ -23,13 +23,12 @@ if TYPE_CHECKING:
     from pathlib import Path
 
     from foresaid.ingest.prices import PriceRows as PriceFile
-    from foresaid.ingest.readers import RawTable
+    from foresaid.ingest.tables import RawTable
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
     from foresaid.model.records import SeriesKind
 
 What = Literal["instruments", "prices", "actions", "forecasters", "calls"]
-Progress = "Callable[[int, int], None]"
 
 
 @dataclass(frozen=True)
@@ -86,6 +85,7 @@ class _Batch:
     issues: tuple[Issue, ...]
     remarks: tuple[str, ...]
     write: Callable[[int], None]
+    bad_lines: Sequence[int] = ()
 
 
 @dataclass(frozen=True)
@@ -125,16 +125,18 @@ def import_file(
     """
     table = read_table(request.path, progress=progress)
     batch = _BATCHES[request.what](_Job(ledger, table, request, codebook))
-    faults = [issue for issue in batch.issues if issue.severity == "error"]
-    lines = {issue.line for issue in faults if issue.line is not None}
-    whole_file = any(issue.line is None for issue in faults)
-    if faults and (not request.keep_good or whole_file):
-        raise InputRejected(f"{request.path} was refused; nothing was imported.", batch.issues)
-    result = Imported(batch.added, batch.known, len(lines), batch.issues, batch.remarks)
+    issues = (*table.issues, *batch.issues)
+    rejected = rejected_lines(table, batch.issues, batch.bad_lines)
+    has_errors = any(issue.severity == "error" for issue in issues)
+    spoilt = any(issue.severity == "error" and issue.line not in rejected for issue in issues)
+    if has_errors and (spoilt or not request.keep_good):
+        raise InputRejected(f"{request.path} was refused; nothing was imported.", issues)
+    remarks = tuple(dict.fromkeys((*table.remarks, *batch.remarks)))
+    result = Imported(batch.added, batch.known, len(rejected), issues, remarks)
     if request.dry_run:
         return result
-    if faults:
-        result = replace(result, reject_file=_reject(request.path, table, faults))
+    if rejected:
+        result = replace(result, reject_file=write_rejects(request.path, table, rejected))
     if batch.added:
         with ledger.writing():
             writes.add_codebook(ledger, codebook, at=request.at)
@@ -151,14 +153,6 @@ def _load_row(request: ImportRequest, table: RawTable, batch: _Batch) -> dict[st
         "n_rows": batch.added,
         "loaded_at": request.at,
     }
-
-
-def _reject(path: Path, table: RawTable, faults: Sequence[Issue]) -> Path:
-    by_line: dict[int, list[Issue]] = defaultdict(list)
-    for issue in faults:
-        if issue.line is not None:
-            by_line[issue.line].append(issue)
-    return write_rejects(path, table, by_line)
 
 
 def _fresh(
@@ -178,7 +172,11 @@ def _fresh(
 
 
 def _instruments(job: _Job) -> _Batch:
-    parsed = parse_instruments(job.table, kinds=job.codebook.instrument_kinds)
+    parsed = parse_instruments(
+        job.table,
+        kinds=job.codebook.instrument_kinds,
+        known=queries.instruments(job.ledger),
+    )
     known = {symbol: one for symbol, (_, one) in queries.instruments(job.ledger).items()}
     fresh, issues = _fresh(parsed.rows, parsed.lines, known, "symbol", job.table.file)
     return _Batch(
@@ -247,7 +245,7 @@ def _prices(job: _Job) -> _Batch:
     ids = {symbol: key for symbol, (key, _) in instruments.items()}
     numbers = np.array([ids[str(symbol)] for symbol in parsed.symbols], dtype=np.int64)
     numbers = numbers[parsed.instrument] if len(numbers) else numbers
-    mixed = _mixed_series(job.ledger, job.request, parsed)
+    mixed = _mixed_series(job, parsed)
     fresh = _unlike_known(job.ledger, numbers, parsed)
     return _Batch(
         int(fresh.sum()),
@@ -255,21 +253,23 @@ def _prices(job: _Job) -> _Batch:
         (*parsed.issues, *mixed),
         parsed.remarks,
         lambda load: writes.add_prices(job.ledger, _price_rows(numbers, parsed, fresh, load)),
+        parsed.bad_lines.tolist(),
     )
 
 
-def _mixed_series(ledger: Ledger, request: ImportRequest, parsed: PriceFile) -> list[Issue]:
+def _mixed_series(job: _Job, parsed: PriceFile) -> list[Issue]:
     """Return a fault for each instrument whose prices are of another series kind so far."""
-    held = queries.series_kinds(ledger, vintage=queries.vintage(ledger))
+    held = queries.series_kinds(job.ledger, vintage=queries.vintage(job.ledger))
+    series = job.request.series
     return [
         Issue(
             "mixed-series",
-            f"the ledger holds {held[symbol]} prices of {symbol}, the file is {request.series}",
-            parsed.file,
+            f"the ledger holds {held[symbol]} prices of {symbol}, the file is {series}",
+            job.table.file,
             hint=f"Import it with --series {held[symbol]}, or keep it in another ledger.",
         )
         for symbol in parsed.symbols
-        if held.get(symbol, request.series) != request.series
+        if held.get(symbol, series) != series
     ]
 
 
@@ -336,7 +336,7 @@ def _calls(job: _Job) -> _Batch:
         len(fresh),
         len(parsed.rows) - len(fresh) - len(issues),
         (*parsed.issues, *issues),
-        (*job.table.remarks, *parsed.remarks),
+        parsed.remarks,
         lambda load: writes.add_calls(
             job.ledger,
             fresh,

@@ -35,5 +35,6 @@ def call_rows(
     table, settlement = listed_calls(ledger)
     for column, value in wanted.items():
         table = table[table[column] == value]
-    rows = table[list(CALL_COLUMNS)].to_dict("records")
+    kept = table[list(CALL_COLUMNS)]
+    rows = [dict(zip(CALL_COLUMNS, row, strict=True)) for row in kept.itertuples(index=False)]
     return rows, None if settlement is None else stale_parts(ledger, settlement)

@@ -65,7 +65,7 @@ def trace_call(ledger: Ledger, ref: str) -> Trace:
     found = table[table["ref"] == ref]
     if found.empty:
         raise UsageError(f"There is no call {ref!r} in this ledger.")
-    row = found.iloc[0].to_dict()
+    row = {str(name): value for name, value in found.iloc[0].items()}
     if row["result"] is None:
         raise UsageError(f"{ref} came after the last settlement. Run: foresaid settle")
     alternates = json.loads(row["alternates"] or "{}")
@@ -286,7 +286,7 @@ class _Teller:
 
     def _result(self) -> str:
         row = self.row
-        return row["result"] + (f": {row['reason']}" if row["reason"] else "")
+        return str(row["result"]) + (f": {row['reason']}" if row["reason"] else "")
 
     def _chance(self) -> str:
         row = self.row

@@ -55,7 +55,7 @@ class Record:
     @property
     def right(self) -> BoolArray:
         """Whether the forecaster was right."""
-        return self.came_true != self.leans_against
+        return np.not_equal(self.came_true, self.leans_against)
 
     @property
     def chance_right(self) -> FloatArray:
