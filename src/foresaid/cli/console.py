@@ -15,7 +15,7 @@ if TYPE_CHECKING:
 
     from foresaid.model.issues import Issue
 
-PIPE_WIDTH = 200
+PIPE_WIDTH = 120
 SHOWN_ISSUES = 50
 
 

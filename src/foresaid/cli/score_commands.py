@@ -100,8 +100,8 @@ def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) 
     """Give out the scores of one ledger, with the cautions beside the table."""
     from foresaid.ledger.store import Ledger
     from foresaid.pipeline.scoring import score_columns_of, score_ledger
+    from foresaid.report import tables
     from foresaid.report.cautions import CAUTIONS
-    from foresaid.report.tables import SCORE_GUIDE, make_table, score_columns
 
     with Ledger.open(ledger) as opened:
         scores = score_ledger(opened, keys, weighted=weighted)
@@ -110,9 +110,14 @@ def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) 
         give_out(scores.rows, score_columns_of(keys), form)
         return
     screen = console()
-    screen.print(make_table(score_columns(keys, has_weights=weighted), scores.rows))
-    screen.print()
-    for text in (SCORE_GUIDE, *CAUTIONS):
+    shown = tables.score_columns(keys, has_weights=weighted)
+    screen.print(tables.make_table(shown, scores.rows))
+    screen.print(f"\n{tables.SCORE_GUIDE}\n")
+    beside = [row for row in scores.rows if tables.has_something_beside(row)]
+    if beside:
+        screen.print(tables.make_table(tables.beside_columns(keys), beside))
+        screen.print(f"\n{tables.BESIDE_GUIDE}\n")
+    for text in CAUTIONS:
         screen.print(text)
 
 

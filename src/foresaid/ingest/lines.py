@@ -6,7 +6,7 @@ import csv
 import hashlib
 import io
 import re
-from itertools import repeat
+from itertools import chain, repeat
 from typing import TYPE_CHECKING, BinaryIO, NamedTuple
 
 from foresaid.ingest.quotes import Fault, Splitter
@@ -125,14 +125,13 @@ class Lines:
         text = self._block()
         block = text.removesuffix("\n")
         lines = block.split("\n")
-        if not _is_plain(block, delimiter) or set(map(str.count, lines, repeat(delimiter))) != {
-            width - 1
-        }:
+        cells = _plain_cells(block, lines, delimiter, width)
+        if cells is None:
             self._hold(lines if text else [])
             return None
         first = self._number + 1
         self._number += len(lines)
-        return first, block.replace("\n", delimiter).split(delimiter)
+        return first, cells
 
     def _hold(self, texts: list[str]) -> None:
         """Keep lines for ``take``."""
@@ -155,13 +154,38 @@ class Lines:
             pass
 
 
+def _plain_cells(block: str, lines: list[str], delimiter: str, width: int) -> list[str] | None:
+    """Return the cells of a block row after row, None where any line is not a plain row."""
+    if not _is_plain(block, delimiter):
+        return None
+    if '"' in block:
+        return _quoted_cells(lines, delimiter, width)
+    if set(map(str.count, lines, repeat(delimiter))) != {width - 1}:
+        return None
+    return block.replace("\n", delimiter).split(delimiter)
+
+
+def _quoted_cells(lines: list[str], delimiter: str, width: int) -> list[str] | None:
+    """Return the cells of lines with quotes, if every line is a row of its own."""
+    reader = csv.reader(lines, delimiter=delimiter, skipinitialspace=True, strict=True)
+    try:
+        rows = list(reader)
+    except csv.Error:
+        return None
+    if len(rows) != len(lines) or set(map(len, rows)) != {width}:
+        return None
+    if not all(row[0].strip() for row in rows):
+        return None
+    return list(chain.from_iterable(rows))
+
+
 def _is_plain(block: str, delimiter: str) -> bool:
-    """Return whether lines are rows, cells are text and no row may be blank."""
-    if '"' in block or "\0" in block or len(block) > LONGEST_RECORD:
+    """Return whether a block is text, of lines that are not too long and surely not blank."""
+    if "\0" in block or len(block) > LONGEST_RECORD:
         return False
     if not block or block[0] in " \t" + delimiter:
         return False
-    if any("\n" + mark in block for mark in {" ", "\t", delimiter}):
+    if any("\n" + mark in block for mark in {" ", "\t", "\n", delimiter}):
         return False
     return block.isascii() or not _SUSPECT.search(block)
 

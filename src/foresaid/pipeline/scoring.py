@@ -66,7 +66,7 @@ def listed_calls(ledger: Ledger) -> tuple[pd.DataFrame, queries.Settlement | Non
     found = queries.outcomes(ledger, settlement.id if settlement else 0)
     table = frame.merge(found, on="call", how="left").astype(object)
     table = table.where(table.notna(), None)
-    table["probability"] = _middle(table)
+    table["probability"] = pd.Series(_middle(table), dtype=object)
     table["outcome"] = [result or "" for result in table["result"]]
     alternates = [json.loads(text or "{}") for text in table["alternates"]]
     for name in alternate_names():

@@ -27,6 +27,7 @@ if TYPE_CHECKING:
     from foresaid.pipeline.outcome_rows import Judgement
 
 EPOCH = date(1970, 1, 1)
+TINY = 1e-12
 
 
 @dataclass(frozen=True)
@@ -145,12 +146,13 @@ class _Teller:
         if self._extreme_session() is not None:
             wanted["nearest in the window"] = self._extreme_session()
         found = []
-        for use, session in wanted.items():
-            source = session and queries.price_source(
+        for session in dict.fromkeys(filter(None, wanted.values())):
+            source = queries.price_source(
                 ledger, self.row["instrument"], session, vintage=self.settlement.vintage
             )
+            uses = ", ".join(use for use, at in wanted.items() if at == session)
             if source:
-                found.append({"use": use} | source)
+                found.append({"use": uses} | source)
         return found
 
     def _publication(self) -> str:
@@ -242,30 +244,43 @@ class _Teller:
         row = self.row
         if row["decided_price"] is None:
             return ""
-        bound = self.kind.kernel.bounds[0] if self.kind.kernel.bounds else None
-        field = self._field_name(bound)
         factor = self.market.bars.factor
         scale = float(
             factor[self.judged.outcomes.decided[0]] / factor[self.windows.reference[0]]
         )
         value = float(row["decided_price"])
-        shown = f"{_price(value)}"
-        if abs(scale - 1.0) > 1e-12:
+        shown = _price(value)
+        if abs(scale - 1.0) > TINY:
             shown += f" x {_price(scale)} = {_price(value * scale)}"
         reference = float(row["reference_price"])
         move = f"{row['move_points']:+.10g}"
         if row["move_frac"] is not None:
             move = f"{100 * row['move_frac']:+.4f} %"
+        tests = "; ".join(self._test(bound, value * scale) for bound in self.kind.kernel.bounds)
         return (
-            f"{field} of {row['decided_session']} is {shown}; against the reference "
-            f"{_price(reference)} that is {move}"
+            f"{self._field_name()} of {row['decided_session']} is {shown}, {move} from the "
+            f"reference {_price(reference)}; {tests}"
         )
 
-    def _field_name(self, bound: Bound | None) -> str:
+    def _test(self, bound: Bound, value: float) -> str:
+        """Return how the price that decided stands to one mark, in words."""
+        mark = float(self.judged.outcomes.marks[0][bound.mark])
+        additive = bool(self.windows.additive[0])
+        reference = float(self.row["reference_price"])
+        limit = reference + mark if additive else reference * mark
+        side = bound.side or (1 if mark > (0.0 if additive else 1.0) else -1)
+        slack = self.book.settlement.tolerance * max(abs(limit), abs(reference))
+        edge = limit + side * slack * (1 if bound.strict else -1)
+        holds = (value - edge) * side > 0 if bound.strict else (value - edge) * side >= 0
+        words = {1: "above", -1: "below"}[side]
+        words = words if bound.strict else f"at or {words}"
+        return f"{_price(value)} is {'' if holds else 'not '}{words} {_price(limit)}"
+
+    def _field_name(self) -> str:
         outcomes = self.judged.outcomes
         bars, at = self.market.bars, outcomes.decided[0]
         value = outcomes.value[0]
-        if bound is None or value == bars.close[at]:
+        if value == bars.close[at]:
             return "the close"
         return "the high" if value == bars.high[at] else "the low"
 

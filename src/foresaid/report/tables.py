@@ -81,39 +81,27 @@ def _by_chance(row: dict[str, Any]) -> str:
     return expected if row["n_base"] == row["n"] else f"{expected} of {row['n_base']}"
 
 
-def _excess(row: dict[str, Any]) -> str:
-    return "–" if row["excess"] is None else f"{row['excess']:+.1f}"
-
-
-def _unscored(row: dict[str, Any]) -> str:
-    """Return the calls outside the rate: open, void, settled early."""
-    return f"{row['open']}/{row['void']}/{row['early']}"
-
-
 def _imputed(row: dict[str, Any]) -> str:
     return f"{row['imputed_hits']} of {row['imputed_n']}" if row["imputed_n"] else "–"
 
 
-def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
-    """Return the columns of the score table for groups by ``keys``."""
-
+def _keys(keys: Sequence[str]) -> list[Column]:
     def key_text(key: str) -> Callable[[dict[str, Any]], str]:
         return lambda row: str(row[key] or "–")
 
-    columns = [Column(key, key_text(key), "left") for key in keys]
-    columns += [
+    return [Column(key, key_text(key), "left") for key in keys]
+
+
+def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
+    """Return the columns of the score table for groups by ``keys``."""
+    columns = [
+        *_keys(keys),
         Column("right", lambda row: f"{row['hits']} of {row['n']}"),
-        Column("rate (95 %)", _interval),
+        Column("rate (interval)", _interval),
         Column("by chance", _by_chance),
-        Column("excess", _excess),
         Column("p coin", lambda row: p_value(row["p_coin"])),
         Column("p base", lambda row: p_value(row["p_base"])),
         Column("apart", lambda row: str(row["n_effective"])),
-        Column("Brier", lambda row: decimal(row["brier"])),
-        Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),
-        Column("open/void/early", _unscored),
-        Column("no call", lambda row: str(row["not_a_call"] or "–")),
-        Column("undated", _imputed),
     ]
     if has_weights:
         columns.append(Column("weighted", lambda row: fraction(row["weighted_hit_rate"])))
@@ -121,11 +109,40 @@ def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
     return columns
 
 
+def beside_columns(keys: Sequence[str]) -> list[Column]:
+    """Return the columns of what stands beside the rates."""
+
+    def count(name: str) -> Callable[[dict[str, Any]], str]:
+        return lambda row: str(row[name] or "–")
+
+    return [
+        *_keys(keys),
+        Column("not a call", count("not_a_call")),
+        Column("open", count("open")),
+        Column("void", count("void")),
+        Column("early", count("early")),
+        Column("undated right", _imputed),
+        Column("with probability", count("n_probability")),
+        Column("Brier", lambda row: decimal(row["brier"])),
+        Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),
+    ]
+
+
+def has_something_beside(row: dict[str, Any]) -> bool:
+    """Return whether a group has anything but matured calls without probabilities."""
+    names = ("not_a_call", "open", "void", "early", "imputed_n", "n_probability")
+    return any(row[name] for name in names)
+
+
 SCORE_GUIDE = (
     "right: calls that came right, of all that matured with a stated date. by chance: how many "
-    "would have with no skill, from the instrument's own past. p: chance of doing as well or "
-    "better by luck. apart: windows that do not overlap. undated: calls without a stated date, "
-    "kept out of all other columns. --format csv or json has every figure in full."
+    "would have with no skill, from each market's own past. p: how often luck alone does as "
+    "well or better, against a coin and against that past. apart: windows without overlap."
+)
+BESIDE_GUIDE = (
+    "Outside the rates: open and void calls, calls settled early whose date has not come, and "
+    "calls without a stated date. Brier: mean squared distance of stated probabilities, 0 is "
+    "best; skill: how much of the Brier score of chance is saved."
 )
 
 

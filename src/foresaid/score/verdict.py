@@ -8,8 +8,8 @@ from typing import TYPE_CHECKING
 if TYPE_CHECKING:
     from foresaid.model.codebook import VerdictRules
 
-AHEAD = "ahead of the base rate, timing not tested"
-BEHIND = "behind the base rate, timing not tested"
+AHEAD = "ahead of the base rate"
+BEHIND = "behind the base rate"
 NO_DIFFERENT = "no different from chance"
 TOO_FEW = "too few to tell"
 NOT_ESTIMABLE = "not estimable"

@@ -75,7 +75,8 @@ def test_a_wrong_date_comes_with_what_to_write(text, order, code, hint):
     ("text", "code"),
     [("", "empty"), ("2025-13-01", "no-such-date"), ("2025-00-10", "no-such-date"),
      ("14 March", "not-a-date"), ("=TODAY()", "not-a-date"),
-     ("1500-01-01", "year-out-of-range"), ("9999-01-01", "year-out-of-range"), ("0000-01-01", "year-out-of-range")],
+     ("1500-01-01", "year-out-of-range"), ("9999-01-01", "year-out-of-range"),
+     ("0000-01-01", "year-out-of-range")],
 )  # fmt: skip
 def test_what_is_no_date_is_refused(text, code):
     assert parse_date(text).code == code
