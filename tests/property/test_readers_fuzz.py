@@ -148,11 +148,14 @@ CELL = st.text(
         ).map(lambda rows: (width, rows))
     ),
     st.sampled_from(",;\t|"),
-    st.sampled_from(["\n", "\r\n", "\r"]),
-    st.sampled_from(["utf-8", "utf-8-sig", "utf-16"]),
+    st.tuples(
+        st.sampled_from(["\n", "\r\n", "\r"]), st.sampled_from(["utf-8", "utf-8-sig", "utf-16"])
+    ),
     st.booleans(),
+    st.sampled_from([1, 20, 1 << 18]),
 )
-def test_well_formed_tables_come_back(folder, sized, delimiter, end, encoding, quote_all):
+def test_well_formed_tables_come_back(folder, sized, delimiter, form, quote_all, block):
+    end, encoding = form
     width, rows = sized
     if encoding == "utf-16":
         rows = [[cell.replace("\ufffd", "?") for cell in row] for row in rows]
@@ -163,7 +166,9 @@ def test_well_formed_tables_come_back(folder, sized, delimiter, end, encoding, q
     writer.writerows([names, *rows])
     path = folder / "well.csv"
     path.write_bytes(stream.getvalue().replace("\n", end).encode(encoding))
-    table = read_table(path)
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(lines_module, "_BLOCK", block)
+        table = read_table(path)
     assert [issue for issue in table.issues if issue.code != "no-rows"] == []
     assert table.columns == tuple(names)
     columns = list(zip(*rows, strict=True)) or [()] * width

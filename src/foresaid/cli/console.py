@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from foresaid.model.issues import Issue
 
 PIPE_WIDTH = 120
-SHOWN_ISSUES = 50
+SHOWN_ISSUES = 1_000
 
 
 class Format(StrEnum):
@@ -65,7 +65,7 @@ def show_issues(issues: Iterable[Issue]) -> None:
     for line in lines[:SHOWN_ISSUES]:
         say(line)
     if len(lines) > SHOWN_ISSUES:
-        say(f"... and {len(lines) - SHOWN_ISSUES} more; --format json lists all of them.")
+        say(f"... and {len(lines) - SHOWN_ISSUES} more of the same file.")
 
 
 @contextmanager

@@ -12,7 +12,7 @@ from typer.core import TyperGroup
 from foresaid import __version__
 from foresaid.cli import ledger_commands, score_commands
 from foresaid.cli.console import say, show_issues
-from foresaid.model.errors import ForesaidError, InputRejected
+from foresaid.model.errors import ForesaidError
 
 EPILOG = (
     "Exit status: 0 done, 1 a fault of the program, 2 the request makes no sense, 3 a file was "
@@ -30,8 +30,7 @@ class _Boundary(TyperGroup):
         except ForesaidError as fault:
             if ctx.params.get("debug"):
                 raise
-            if isinstance(fault, InputRejected):
-                show_issues(fault.issues)
+            show_issues(fault.issues)
             say(f"foresaid: {fault}")
             raise typer.Exit(fault.exit_status) from fault
         except BrokenPipeError:

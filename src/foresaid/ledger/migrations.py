@@ -283,6 +283,7 @@ CREATE TABLE history (
 ) STRICT;
 
 CREATE INDEX statement_by_forecaster ON statement (forecaster);
+CREATE INDEX statement_by_original ON statement (copy_of) WHERE copy_of IS NOT NULL;
 CREATE INDEX call_by_instrument ON call (instrument);
 
 CREATE VIEW calls_readable AS

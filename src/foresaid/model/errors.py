@@ -23,9 +23,19 @@ if TYPE_CHECKING:
 
 
 class ForesaidError(Exception):
-    """A fault that is told to the user in one line instead of a traceback."""
+    """A fault that is told to the user in words instead of a traceback.
+
+    Attributes
+    ----------
+    issues : tuple of Issue
+        Every fault found in a file, in its order; empty where no file is at fault.
+    """
 
     exit_status: ClassVar[int] = 1
+
+    def __init__(self, message: str, issues: Sequence[Issue] = ()) -> None:
+        super().__init__(message)
+        self.issues = tuple(issues)
 
 
 class UsageError(ForesaidError):
@@ -35,19 +45,9 @@ class UsageError(ForesaidError):
 
 
 class InputRejected(ForesaidError):  # noqa: N818 - reads as what happened
-    """A file was refused as a whole (exit status 3).
-
-    Attributes
-    ----------
-    issues : tuple of Issue
-        Every fault found, in the order of the file.
-    """
+    """A file was refused as a whole (exit status 3)."""
 
     exit_status = 3
-
-    def __init__(self, message: str, issues: Sequence[Issue] = ()) -> None:
-        super().__init__(message)
-        self.issues = tuple(issues)
 
 
 class LedgerError(ForesaidError):

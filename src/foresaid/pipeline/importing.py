@@ -14,7 +14,7 @@ from foresaid.ingest.readers import read_table
 from foresaid.ingest.rejects import rejected_lines, write_rejects
 from foresaid.ingest.things import parse_forecasters, parse_instruments
 from foresaid.ledger import queries, writes
-from foresaid.model.errors import InputRejected
+from foresaid.model.errors import CheckFailed, InputRejected
 from foresaid.model.issues import Issue, clip
 
 if TYPE_CHECKING:
@@ -122,6 +122,8 @@ def import_file(
     ------
     InputRejected
         If any row has a fault and ``keep_good`` is off; the ledger stays as it was.
+    CheckFailed
+        The same on a dry run.
     """
     table = read_table(request.path, progress=progress)
     batch = _BATCHES[request.what](_Job(ledger, table, request, codebook))
@@ -130,6 +132,8 @@ def import_file(
     has_errors = any(issue.severity == "error" for issue in issues)
     spoilt = any(issue.severity == "error" and issue.line not in rejected for issue in issues)
     if has_errors and (spoilt or not request.keep_good):
+        if request.dry_run:
+            raise CheckFailed(f"{request.path} would be refused.", issues)
         raise InputRejected(f"{request.path} was refused; nothing was imported.", issues)
     remarks = tuple(dict.fromkeys((*table.remarks, *batch.remarks)))
     result = Imported(batch.added, batch.known, len(rejected), issues, remarks)

@@ -16,47 +16,61 @@ def disjoint_windows(starts: IntArray, ends: IntArray) -> int:
     Parameters
     ----------
     starts, ends : ndarray of int, shape (n,)
-        First and last session of each window, ``ends >= starts``; n may be 0. A window may
-        begin on the session on which another ended: the close of one is the reference of
-        the next.
+        First and last session of each window, ``ends >= starts``, in any order; n may be 0.
 
     Returns
     -------
     int
-        0 for no window.
+        0 for no window, at least 1 otherwise.
 
     Raises
     ------
     ValueError
-        If the arrays differ in length or a window ends before it starts.
+        If an array is not flat or not of whole numbers, the arrays differ in length, or a
+        window ends before it starts.
 
     Notes
     -----
-    Greedy choice of the earliest end, which is optimal. The loop runs once for each window
-    chosen: the earliest end among windows that start late enough is a suffix minimum.
+    Two windows are disjoint if one starts at or after the end of the other: the close that
+    ends a window may be the reference of the next. A window that starts and ends on the same
+    session may stand between two that meet there, but another one just like it overlaps it.
+
+    Greedy choice of the earliest end, which is optimal. The earliest end among windows that
+    start late enough is a suffix minimum, so the loop runs once for each window chosen.
 
     References
     ----------
-    .. [1] Interval scheduling: J. Kleinberg, E. Tardos (2006). Algorithm Design, section 4.1.
+    .. [1] J. Kleinberg, E. Tardos (2006). Algorithm Design, section 4.1 (interval
+       scheduling).
 
     Examples
     --------
     >>> disjoint_windows(np.array([0, 5, 10]), np.array([10, 15, 20]))
     2
     """
-    starts, ends = np.asarray(starts, dtype=np.int64), np.asarray(ends, dtype=np.int64)
-    if len(starts) != len(ends):
-        raise ValueError(f"starts, ends have lengths {len(starts)}, {len(ends)}")
-    if (ends < starts).any():
-        raise ValueError("ends must not lie before starts")
-    order = np.argsort(starts, kind="stable")
-    by_start = starts[order]
-    earliest_end = np.minimum.accumulate(ends[order][::-1])[::-1]
+    first, last = _checked("starts", starts), _checked("ends", ends)
+    if len(first) != len(last):
+        raise ValueError(f"starts has length {len(first)}, ends {len(last)}")
+    if (last < first).any():
+        row = int(np.argmax(last < first))
+        raise ValueError(f"ends[{row}]={last[row]} lies before starts[{row}]={first[row]}")
+    # on doubled sessions a window of no length gets one, which holds off only its like
+    is_point = first == last
+    begin, finish = 2 * first + ~is_point, 2 * last + is_point
+    order = np.argsort(begin)
+    earliest_finish = np.minimum.accumulate(finish[order][::-1])[::-1]
+    following = np.searchsorted(begin[order], earliest_finish)
     count, at = 0, 0
-    while at < len(by_start):
-        end = earliest_end[at]
+    while at < len(following):
+        at = int(following[at])
         count += 1
-        # a window of one session must not be chosen again
-        after = end + 1 if end == by_start[at] else end
-        at = int(np.searchsorted(by_start, after))
     return count
+
+
+def _checked(name: str, sessions: IntArray) -> IntArray:
+    values = np.asarray(sessions)
+    if values.ndim != 1:
+        raise ValueError(f"{name} has shape {values.shape}, must be flat")
+    if values.size and values.dtype.kind not in "iu":
+        raise ValueError(f"{name} has dtype {values.dtype}, must hold whole numbers")
+    return values.astype(np.int64)

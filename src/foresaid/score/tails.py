@@ -14,7 +14,7 @@ class Tails:
     upper : float
         Chance of at least as many hits.
     lower : float
-        Chance of at most as many.
+        Chance of at most as many. The two sum to 1 plus the chance of the count itself.
     """
 
     upper: float
