@@ -7,7 +7,6 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from foresaid.settle.outcomes import settle_calls
-
 from support.worlds import BOOK, SmallWorld, arrays_of, calls_in, market_of, worlds
 
 FIELDS = ("result", "reason", "direction")

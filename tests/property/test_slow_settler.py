@@ -1,13 +1,16 @@
 """An independent slow settler, written from docs/settlement.md with plain loops."""
 
+import math
 import re
+import statistics
+from functools import partial
+from itertools import pairwise
 
 import numpy as np
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from foresaid.settle.outcomes import settle_calls
-
 from support.worlds import BOOK, arrays_of, calls_in, market_of, worlds
 
 OPENS, CLOSES = 540, 1050
@@ -70,6 +73,23 @@ def judge(world, call, reference, window, last):
     ]
     head = " ".join(w for w in words if not w[0].isdigit())
     close, high, low = world.close, world.high, world.low
+    if head in SPECIAL:
+        extra = {"size": moves[0] / price} if head == "drawdown" else {}
+        return SPECIAL[head](
+            world=world,
+            reference=reference,
+            window=window,
+            last=last,
+            price=price,
+            amounts=amounts,
+            **extra,
+        )
+    if head == "targets":
+        if near(amounts[0], price):
+            return "void", None
+        head = "ends at least" if amounts[0] > price else "ends at most"
+    if head == "range to at":
+        head = "ends between and"
     if head.startswith(("ends", "strengthens", "weakens")):
         if last is None:
             return "open", None
@@ -131,7 +151,76 @@ def judge(world, call, reference, window, last):
     return ("hit" if head.startswith("stays") else "miss"), last
 
 
-@settings(max_examples=1500, deadline=None)
+def drawdown(*, world, reference, window, last, amounts, size=None, **_):
+    """A close at or under the running peak less the size, newly so within the window."""
+    begin = max(0, reference - 252)
+    keep = 1 - (size if size is not None else amounts[0] / 100)
+
+    def under(day):
+        peak = max(world.close[begin : day + 1])
+        return below(world.close[day], peak * keep, strict=False)
+
+    for i in window:
+        was = under(i - 1) if i - 1 >= begin else False
+        if under(i) and not was:
+            return "hit", i
+    return ("open", None) if last is None else ("miss", last)
+
+
+def old_extreme(*, world, reference, window, last, side, **_):
+    begin = max(0, reference - 252)
+    before = world.close[begin:reference]
+    if not len(before):
+        return "void", None
+    level = min(before) if side > 0 else max(before)
+    for i in window:
+        if (below if side > 0 else above)(world.close[i], level, strict=True):
+            return "miss", i
+    return ("open", None) if last is None else ("hit", last)
+
+
+def volatility(*, world, reference, window, last, amounts, side, **_):
+    if last is None:
+        end = window[-1] if len(window) else None
+        return ("void", None) if end is not None and end - reference < 2 else ("open", None)
+    if last - reference < 2:
+        return "void", None
+    closes = [float(x) for x in world.close[reference : last + 1]]
+    moves = [math.log(b / a) for a, b in pairwise(closes)]
+    mark = amounts[0] / 100
+    found = statistics.stdev(moves) * math.sqrt(252)
+    good = above(found, mark, strict=True) if side > 0 else below(found, mark, strict=True)
+    return ("hit" if good else "miss"), last
+
+
+def race(*, world, window, last, price, amounts, **_):
+    if any(near(level, price) for level in amounts):
+        return "void", None
+    for i in window:
+        touched = [
+            above(world.high[i], level, strict=False)
+            if level > price
+            else below(world.low[i], level, strict=False)
+            for level in amounts
+        ]
+        if all(touched):
+            return "void", None
+        if any(touched):
+            return ("hit" if touched[0] else "miss"), i
+    return ("open", None) if last is None else ("miss", last)
+
+
+SPECIAL = {
+    "drawdown": drawdown,
+    "low holds": partial(old_extreme, side=1),
+    "high holds": partial(old_extreme, side=-1),
+    "volatility above": partial(volatility, side=1),
+    "volatility below": partial(volatility, side=-1),
+    "touches before": race,
+}
+
+
+@settings(max_examples=3000, deadline=None)
 @given(st.data())
 def test_slow_settler_agrees(data):
     world = data.draw(worlds())

@@ -67,7 +67,7 @@ def arrays_of(calls):
     """Return the arrays that settlement reads."""
     n = len(calls)
     parsed = [parse_claim(call.phrase) for call in calls]
-    values, units = np.zeros((n, 2)), np.zeros((n, 2), dtype=np.int64)
+    values, units = np.zeros((n, 3)), np.zeros((n, 3), dtype=np.int64)
     for row, claim in enumerate(parsed):
         for column, quantity in enumerate(claim.quantities):
             values[row, column] = quantity.value
@@ -112,7 +112,9 @@ def calls_in(draw, world, *, levels=True):
     low = float(np.min(world.low))
     slots = []
     for slot in kind.slots:
-        if slot == "size":
+        if slot == "percent":
+            slots.append(f"{draw(st.integers(1, 99))}%")
+        elif slot == "size":
             slots.append(f"{draw(st.integers(1, 12))}{draw(st.sampled_from(['%', 'pt']))}")
         else:
             slots.append(draw(st.integers(max(1, int(low) - 2), int(low) + 30)))

@@ -98,7 +98,8 @@ def base_rates(
     Notes
     -----
     Start ``t`` counts for a call with reference ``r`` when its nominal deadline (day ``t`` plus
-    the span) is no later than session ``r - 1``, the last that had closed at publication.
+    the span) is no later than session ``r - 1``, the last that had closed at publication,
+    and the claim has a meaning there.
     """
     n = len(starts.reference)
     windows, hits = np.zeros(n, dtype=np.int64), np.zeros(n, dtype=np.int64)
@@ -112,9 +113,23 @@ def base_rates(
             marks = starts.marks[part, :n_marks]
             came_true = kernel.outcomes(bars, earlier.all, marks, tolerance)
             known = np.arange(len(earlier.all)) < earlier.known(bars, starts, part)[:, None]
+            if not kernel.fits_anywhere:
+                known &= _fits(kernel, bars, earlier.all, marks, tolerance)
             windows[part] = known.sum(axis=1)
             hits[part] = (came_true & known).sum(axis=1)
     return BaseRate(windows, hits, disjoint_in_history(bars, starts))
+
+
+def _fits(
+    kernel: Kernel, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+) -> BoolArray:
+    """Return at which windows each set of marks has a meaning, shape (m, n)."""
+    fit = np.ones((len(marks), len(windows)), dtype=bool)
+    for row, own in enumerate(marks):
+        shared = np.broadcast_to(own, (len(windows), len(own)))
+        for mask, _ in kernel.unsound(bars, windows, shared, tolerance):
+            fit[row] &= ~mask
+    return fit
 
 
 def disjoint_in_history(bars: Bars, starts: Starts) -> IntArray:

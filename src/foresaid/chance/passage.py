@@ -20,6 +20,7 @@ if TYPE_CHECKING:
 MONITORING_BETA = 1.4603545088095868 / math.sqrt(2.0 * math.pi)
 _OUT_OF_REACH = 40.0  # a normal tail this far out is 0 in double precision
 _NARROW = 2.0  # width of a band, in standard deviations, below which waves beat images
+_CLOSED = 0.01  # a band this narrow keeps nothing in double precision
 _IMAGES = np.arange(-6, 7)
 _WAVES = np.array([1.0, 3.0, 5.0, 7.0])
 
@@ -209,7 +210,7 @@ def _by_waves(low: FloatArray, high: FloatArray) -> FloatArray:
     # the sine of the nearer mark: at the far one it would lose digits near a multiple of pi
     near = np.minimum(-low, high)[..., None]
     width = (high - low)[..., None]
-    decay = np.exp(-((_WAVES * np.pi / width) ** 2) / 2.0)
+    decay = np.exp(-((_WAVES * np.pi / np.maximum(width, _CLOSED)) ** 2) / 2.0)
     waves = 4.0 / (_WAVES * np.pi) * np.sin(_WAVES * np.pi * near / width) * decay
     result: FloatArray = np.sum(waves, axis=-1)
     return result

@@ -8,12 +8,13 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from foresaid.chance.base_rate import BaseRate, Starts, base_rates
+from foresaid.chance.simulation import draw_steps, simulated_chance
 from foresaid.chance.volatility import modelled_chance, rolling_volatility
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from foresaid.claims.registry import Kind
+    from foresaid.claims.kind import Kind
     from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray
     from foresaid.model.codebook import ChanceRules
 
@@ -96,19 +97,56 @@ def chances(
         found = base_rates(kind.kernel, len(kind.marks), bars, part, tolerance)
         for field in fields(BaseRate):
             getattr(counts, field.name)[rows] = getattr(found, field.name)
-        modelled[rows] = modelled_chance(
-            kind.kernel.bounds,
-            part.marks,
-            additive=part.additive,
-            deviation=deviation[rows],
-            n_sessions=expected_sessions(bars, part),
-            has_range=bars.has_range[np.maximum(part.reference - 1, 0)],
-        )
+        walk = _Model(bars, part, deviation[rows], found.disjoint < rules.enough_windows)
+        closed = bool(kind.kernel.bounds)
+        modelled[rows] = walk.of_bounds(kind) if closed else walk.by_simulation(kind, rules)
     bounded = np.clip(modelled, rules.modelled_floor, 1.0 - rules.modelled_floor)
     chance, model = combine(counts, bounded, enough=rules.enough_windows)
     return Chances(
         chance, model, counts.windows, counts.hits, counts.disjoint, deviation, bounded
     )
+
+
+@dataclass(frozen=True)
+class _Model:
+    """The volatility model for the calls of one kind; ``is_short`` where it is needed."""
+
+    bars: Bars
+    starts: Starts
+    deviation: FloatArray
+    is_short: BoolArray
+
+    def of_bounds(self, kind: Kind) -> FloatArray:
+        """Return the chances in closed form."""
+        return modelled_chance(
+            kind.kernel.bounds,
+            self.starts.marks,
+            additive=self.starts.additive,
+            deviation=self.deviation,
+            n_sessions=expected_sessions(self.bars, self.starts),
+            has_range=self.bars.has_range[np.maximum(self.starts.reference - 1, 0)],
+        )
+
+    def by_simulation(self, kind: Kind, rules: ChanceRules) -> FloatArray:
+        """Return the chances by simulation, only where history is short."""
+        result = np.full(len(self.deviation), np.nan)
+        rows = np.flatnonzero(self.is_short)
+        if len(rows):
+            lengths = expected_sessions(self.bars, self.starts)[rows]
+            steps = draw_steps(
+                np.random.default_rng(rules.walks_seed),
+                paths=rules.walks,
+                sessions=round(float(lengths.max())),
+            )
+            result[rows] = simulated_chance(
+                kind.kernel,
+                self.starts.marks[rows, : len(kind.marks)],
+                additive=self.starts.additive[rows],
+                deviation=self.deviation[rows],
+                n_sessions=lengths,
+                steps=steps,
+            )
+        return result
 
 
 def combine(

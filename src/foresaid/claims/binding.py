@@ -8,7 +8,7 @@ import numpy as np
 
 if TYPE_CHECKING:
     from foresaid.claims.claim import Claim
-    from foresaid.claims.registry import Kind, Mark
+    from foresaid.claims.kind import Kind, Mark
     from foresaid.model.bars import BoolArray, FloatArray, IntArray
 
 UNIT_CODES = {"": 0, "%": 1, "pp": 2, "bp": 3, "pt": 4}
@@ -72,6 +72,8 @@ def _mark(
     if mark.role == "here":
         return here
     stated = values[:, mark.quantity]
+    if mark.role == "share":
+        return stated / 100.0
     divisor = np.where(additive, 1.0, reference)
     if mark.role == "level":
         level = stated * level_factor

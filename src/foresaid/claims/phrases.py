@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import math
 import re
 from functools import lru_cache
 from typing import TYPE_CHECKING
@@ -10,18 +11,20 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from foresaid.claims.claim import Claim, PhraseError, Quantity
-from foresaid.claims.registry import KINDS, NOT_A_CALL, SLOT
+from foresaid.claims.kind import SLOT
+from foresaid.claims.registry import KINDS, NOT_A_CALL
+from foresaid.model.issues import clip
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
-    from foresaid.claims.registry import Kind
+    from foresaid.claims.kind import Kind
     from foresaid.model.codebook import InstrumentKind
 
 NUMBER = re.compile(r"[+-]?(\d{1,3}(,\d{3})+|\d+)(\.\d+)?")
 SIZE = re.compile(r"(?P<number>[+-]?[\d,.]+)(?P<unit>%|pp|bp|pt)?")
 GAP_BEFORE_UNIT = re.compile(r"(?<=\d)\s+(?=(%|pp|bp|pt)(\s|$))")
-EXAMPLES = {"level": ("5000", "5500"), "size": ("5%",)}
+EXAMPLES = {"level": ("5000", "5500"), "size": ("5%", "10%"), "percent": ("20%",)}
 
 
 @lru_cache(maxsize=100_000)
@@ -83,6 +86,19 @@ def print_number(value: float) -> str:
     return np.format_float_positional(value, trim="-")
 
 
+def stated_probability(claim: Claim) -> float | None:
+    """Return the probability that a phrase itself states, None for most.
+
+    Examples
+    --------
+    >>> stated_probability(parse_claim("range 10 to 20 at 80%"))
+    0.8
+    """
+    if not claim.is_call or not KINDS[claim.kind].states_probability:
+        return None
+    return claim.quantities[-1].value / 100.0
+
+
 def legal_forms() -> list[str]:
     """Return every legal phrase with examples in its slots, in the order of the registry."""
     return [_example(name) for name in KINDS] + [f"{NOT_A_CALL}: no date"]
@@ -105,8 +121,10 @@ def unit_faults(
     PhraseError or None
         None when every size has a unit the kind knows.
     """
-    for quantity in claim.quantities:
-        if not quantity.unit:
+    for quantity, slot in zip(claim.quantities, KINDS[claim.kind].slots, strict=True):
+        if slot == "percent":
+            continue
+        if slot == "level":
             if quantity.value <= 0 and not instrument_kind.negative:
                 level = print_number(quantity.value)
                 return PhraseError(
@@ -161,23 +179,26 @@ def _fill(kind: Kind, words: list[str]) -> Claim:
     for token, word in zip(_tokens(kind), words, strict=True):
         slot = SLOT.fullmatch(token)
         if slot:
-            read = _level if slot.group(1) == "level" else _size
-            quantities.append(read(word, kind))
+            quantities.append(_READERS[slot.group(1)](word, kind))
     if kind.ascending and quantities[0].value >= quantities[1].value:
+        low, high = (print_number(one.value) for one in quantities[:2])
+        turned = [] if low == high else [high, low, *words[-1:]]
         raise PhraseError(
-            f"the range goes from {words[-3]} to {words[-1]}; the lower level comes first",
-            f"Write `{' '.join([*words[:-3], words[-1], words[-2], words[-3]])}`.",
+            f"the range goes from {low} to {high}; the lower level comes first",
+            f"Write `{_in_words(kind, turned)}`.",
         )
     return Claim(kind.name, tuple(quantities))
 
 
 def _level(word: str, kind: Kind) -> Quantity:
     if NUMBER.fullmatch(word):
-        return Quantity(float(word.replace(",", "")))
-    if SIZE.fullmatch(word) and NUMBER.fullmatch(word.rstrip("%pbt")):
+        return Quantity(_value(word))
+    size = SIZE.fullmatch(word.lower())
+    if size and NUMBER.fullmatch(size["number"]):
+        other = _legal_phrase(KINDS["ends higher by"], [word.lower().lstrip("+-")])
         raise PhraseError(
             f"`{word}` is a size where `{kind.name}` needs a level, the price itself",
-            f"Write a level, `{_example(kind.name)}`, or a size, `ends higher by {word}`.",
+            f"Write a level, `{_example(kind.name)}`, or a size, `{other}`.",
         )
     raise PhraseError(*_bad_number(word))
 
@@ -186,21 +207,43 @@ def _size(word: str, kind: Kind) -> Quantity:
     match = SIZE.fullmatch(word.lower())
     if match is None or not NUMBER.fullmatch(match["number"]):
         raise PhraseError(*_bad_number(word))
-    value = float(match["number"].replace(",", ""))
+    value = _value(match["number"])
     unit = match["unit"]
+    if value <= 0:
+        raise PhraseError(
+            f"the size `{word}` must be above zero", "The words higher and lower give the side."
+        )
     if unit is None:
         raise PhraseError(
             f"`{word}` has no unit; `{kind.name}` needs a size",
             f"Write `{word}%`, `{word}pt` (points), `{word}pp` (percentage points of a yield) "
             f"or `{word}bp` (basis points); for a price, `ends above {word}`.",
         )
-    if value <= 0:
-        raise PhraseError(
-            f"the size `{word}` must be above zero", "The words higher and lower give the side."
-        )
     if unit == "%" and value >= 100 and any(m.role.startswith("loss") for m in kind.marks):
         raise PhraseError(f"nothing can lose `{word}`", "Write a size below 100%.")
     return Quantity(value, unit)
+
+
+def _percent(word: str, kind: Kind) -> Quantity:
+    if not word.endswith("%"):
+        raise PhraseError(
+            f"`{word}` is no percentage; `{kind.name}` needs one",
+            f"Write `{_example(kind.name)}`.",
+        )
+    quantity = _size(word, kind)
+    if kind.states_probability and quantity.value >= 100:
+        raise PhraseError(f"`{word}` is no probability", "Write a percentage below 100%.")
+    return quantity
+
+
+_READERS = {"level": _level, "size": _size, "percent": _percent}
+
+
+def _value(number: str) -> float:
+    value = float(number.replace(",", ""))
+    if not math.isfinite(value):
+        raise PhraseError(f"`{clip(number)}` is too large", "Write a smaller number.")
+    return value
 
 
 def _bad_number(word: str) -> tuple[str, str]:
@@ -214,8 +257,8 @@ def _bad_number(word: str) -> tuple[str, str]:
 
 
 def _says_not_a_call(words: list[str]) -> bool:
-    head = " ".join(words[:3]).lower().rstrip(":").rstrip()
-    return head == NOT_A_CALL
+    head = " ".join(words).lower().partition(":")[0].split()
+    return head[:3] == NOT_A_CALL.split()
 
 
 def _not_a_call(text: str) -> Claim:
@@ -231,7 +274,7 @@ def _unreadable(words: list[str]) -> PhraseError:
     """Return the fault of a phrase on no form: the word at fault and the nearest phrase."""
     kind = _nearest(words)
     at = _first_misfit(_tokens(kind), words)
-    example = _in_words(kind, words)
+    example = _legal_phrase(kind, words)
     if at < len(words):
         message = f"the word `{words[at]}` is not understood here"
     else:
@@ -261,6 +304,16 @@ def _first_misfit(tokens: list[str], words: list[str]) -> int:
     return min(len(tokens), len(words))
 
 
+def _legal_phrase(kind: Kind, words: Iterable[str]) -> str:
+    """Return the form of ``kind`` with the numbers of ``words``, or others if they are wrong."""
+    phrase = _in_words(kind, words)
+    try:
+        _fill(kind, phrase.split())
+    except PhraseError:
+        return _in_words(kind, ())
+    return phrase
+
+
 def _in_words(kind: Kind, words: Iterable[str]) -> str:
     """Return the form of ``kind``, with the numbers of ``words`` where they fit."""
     numbers = [word for word in words if _shape(word) == "0"]
@@ -269,7 +322,7 @@ def _in_words(kind: Kind, words: Iterable[str]) -> str:
     def fill(slot: re.Match[str]) -> str:
         number = numbers.pop(0) if numbers else next(spare[slot.group(1)])
         has_unit = number[-1:] in "%pbt"
-        if slot.group(1) == "size":
+        if slot.group(1) != "level":
             return number if has_unit else number + "%"
         return number.rstrip("%pbt") if has_unit else number
 

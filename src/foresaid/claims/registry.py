@@ -1,98 +1,24 @@
 """The closed list of claim kinds: one registration each, used by every room.
 
-A kind is its phrase, the marks its numbers become, and the kernel that judges them.
-Registering one here is all that a new kind takes.
+Registering a kind here is all that a new kind takes.
 """
 
 from __future__ import annotations
 
-import re
-from dataclasses import dataclass, field
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
-from foresaid.claims.kernels import (
-    Bound,
-    BoundKernel,
-    Kernel,
-    On,
-    Over,
-    at_any_time,
-    at_deadline,
-    on_closes,
+from foresaid.claims.bounds import BoundKernel, at_any_time, at_deadline, on_closes
+from foresaid.claims.kernels import Bound, On, Over
+from foresaid.claims.kind import Direction, Kind, Mark
+from foresaid.claims.paths import (
+    DrawdownKernel,
+    OldExtremeKernel,
+    RaceKernel,
+    VolatilityKernel,
 )
 
-Role = Literal["here", "level", "gain", "loss", "gain of thing", "loss of thing"]
-Direction = Literal["up", "down", "none", "by level"]
-
-SLOT = re.compile(r"\{(\w+)\}")
-
-
-@dataclass(frozen=True, slots=True)
-class Mark:
-    """How one mark is made.
-
-    ``here`` is the reference price itself; ``level`` the stated price; ``gain`` and ``loss``
-    a size above or below the reference. The two ``of thing`` roles are for instruments that
-    are quoted the other way round: the quote moves so that the thing named gains or loses
-    the size.
-    """
-
-    role: Role
-    quantity: int = 0
-
-
-@dataclass(frozen=True)
-class Kind:
-    """One kind of claim.
-
-    Attributes
-    ----------
-    form : str
-        The phrase with its slots: ``{level}`` is a price, ``{size}`` a move with its unit.
-    reads : str
-        When it is true, in words, for help and traces.
-    marks : tuple of Mark
-        The marks, in the order the kernel's bounds name them.
-    kernel : Kernel
-        Judges windows; absent where nothing is judged.
-    direction : {"up", "down", "none", "by level"}
-        Which way the quoted number has to go; "by level" where the level decides.
-    alternates : dict of str to Kernel
-        Other readings that are kept beside the result.
-    inverse : Kind or None
-        What it means on an instrument whose sense is inverse, where that differs.
-    ascending : bool
-        Whether the second level must be above the first.
-    """
-
-    form: str
-    reads: str
-    marks: tuple[Mark, ...]
-    kernel: Kernel
-    direction: Direction
-    alternates: dict[str, Kernel] = field(default_factory=dict)
-    inverse: Kind | None = None
-    ascending: bool = False
-
-    @property
-    def name(self) -> str:
-        """The phrase without its slots: the key under which a kind is kept."""
-        return " ".join(SLOT.sub("", self.form).split())
-
-    @property
-    def slots(self) -> tuple[str, ...]:
-        """The slots of the phrase, in order."""
-        return tuple(SLOT.findall(self.form))
-
-    @property
-    def is_sized(self) -> bool:
-        """Whether the phrase names a size, a level or a range."""
-        return bool(self.slots)
-
-    def in_sense(self, *, inverse: bool) -> Kind:
-        """Return the kind as it is judged on an instrument of that sense."""
-        return self.inverse if inverse and self.inverse is not None else self
-
+if TYPE_CHECKING:
+    from foresaid.claims.kernels import Kernel
 
 KINDS: dict[str, Kind] = {}
 
@@ -376,6 +302,97 @@ register(
         "any close in the window is below the reference by at least the size",
         LOSS,
         Bound(-1, strict=False, over=Over.ANY),
+    )
+)
+
+SHARE = Mark("share")
+
+register(
+    Kind(
+        "drawdown {size}",
+        "a close is under the highest close since 252 sessions before the call by at least "
+        "the size, newly so within the window",
+        (LOSS,),
+        DrawdownKernel(),
+        "down",
+        measures="the deepest fall from the running peak in the window, as a part of it",
+    )
+)
+register(
+    Kind(
+        "low holds",
+        "no close in the window is below the lowest close of the 252 sessions before the call",
+        (HERE,),
+        OldExtremeKernel(1),
+        "none",
+        measures="the deciding close over the lowest close before the call, less 1",
+        names_level=True,
+    )
+)
+register(
+    Kind(
+        "high holds",
+        "no close in the window is above the highest close of the 252 sessions before the call",
+        (HERE,),
+        OldExtremeKernel(-1),
+        "none",
+        measures="the deciding close over the highest close before the call, less 1",
+        names_level=True,
+    )
+)
+register(
+    Kind(
+        "touches {level} before {level}",
+        "the first level is touched, and the second was not touched by then",
+        (LEVEL, Mark("level", 1)),
+        RaceKernel(),
+        "by level",
+    )
+)
+
+
+def _target() -> Kind:
+    kernel = BoundKernel((Bound(0, strict=False, over=Over.END),))
+    return Kind(
+        "targets {level}",
+        "the deadline close is at the level or beyond it, as seen from the reference",
+        (LEVEL,),
+        kernel,
+        "by level",
+        {"any_time": at_any_time(kernel)},
+    )
+
+
+register(_target())
+register(
+    _between(
+        "range {level} to {level} at {percent}",
+        "the deadline close is in the range, ends included; the percentage is the stated "
+        "probability of that",
+        (LEVEL, Mark("level", 1)),
+        Over.END,
+    )
+)
+register(
+    Kind(
+        "volatility above {percent}",
+        "the annualised standard deviation of the daily log moves from reference to deadline "
+        "is above the percentage",
+        (SHARE,),
+        VolatilityKernel(1),
+        "none",
+        measures="the annualised volatility of the window, as a fraction",
+    )
+)
+register(
+    Kind(
+        "volatility below {percent}",
+        "the annualised standard deviation of the daily log moves from reference to deadline "
+        "is below the percentage",
+        (SHARE,),
+        VolatilityKernel(-1),
+        "none",
+        measures="the annualised volatility of the window, as a fraction",
     )
 )
 

@@ -14,7 +14,12 @@ from foresaid.claims.classes import horizon_class, specificity_class
 from foresaid.claims.conditions import parse_condition
 from foresaid.claims.horizons import Horizon, parse_horizon
 from foresaid.claims.likelihood import Likelihood, parse_likelihood_word
-from foresaid.claims.phrases import parse_claim, print_claim, unit_faults
+from foresaid.claims.phrases import (
+    parse_claim,
+    print_claim,
+    stated_probability,
+    unit_faults,
+)
 from foresaid.ingest.cells import parse_probability
 from foresaid.ingest.dates import parse_date, parse_said_at
 from foresaid.ingest.faults import nearest
@@ -160,7 +165,7 @@ class _Row(RowReader):
         said, said_on = self._said(instrument)
         self._check_units(claim, instrument)
         horizon = self._horizon(said_on, needed=is_call)
-        likelihood = self._probability()
+        likelihood = self._probability(claim)
         given = self._given(said_on)
         coded_at, link = self._coded_at(said_on), self._link()
         copy_of, revises = (
@@ -336,10 +341,18 @@ class _Row(RowReader):
             self.fault(column, code, fault.message, fault.hint)
             return None
 
-    def _probability(self) -> Likelihood | None:
+    def _probability(self, claim: Claim | None) -> Likelihood | None:
         text = self.cell("probability")
-        if not text:
-            return None
+        stated = stated_probability(claim) if claim is not None else None
+        if not text or stated is not None:
+            if text:
+                self.fault(
+                    "probability",
+                    "double-probability",
+                    "the claim states its probability itself",
+                    "Leave the cell empty.",
+                )
+            return Likelihood(stated, stated) if stated is not None else None
         number = parse_probability(text)
         if isinstance(number, float):
             return Likelihood(number, number)

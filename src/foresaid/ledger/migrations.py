@@ -234,6 +234,7 @@ CREATE TABLE outcome (
   decided_price REAL,
   move_frac REAL,
   move_points REAL,
+  measured REAL,
   alternates TEXT NOT NULL,
   flags TEXT NOT NULL,
   chance REAL CHECK (chance BETWEEN 0 AND 1),

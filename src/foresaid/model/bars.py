@@ -15,6 +15,8 @@ FloatArray: TypeAlias = "np.ndarray[Any, np.dtype[np.float64]]"
 IntArray: TypeAlias = "np.ndarray[Any, np.dtype[np.int64]]"
 BoolArray: TypeAlias = "np.ndarray[Any, np.dtype[np.bool_]]"
 
+_BEYOND = 2**40  # more than any day or cell
+
 
 @dataclass(frozen=True)
 class Bars:
@@ -76,7 +78,8 @@ class Bars:
         table[inner] = sessions
         table[first] = 4 * (starts - 1)
         table[last] = 4 * (ends - 1) + 2
-        shift = np.zeros(len(starts), dtype=np.int64)
+        # where there is no history every day is after it
+        shift = np.full(len(starts), _BEYOND, dtype=np.int64)
         shift[filled] = first[filled] + 1 - self.day[starts[filled]]
         return table, shift, first, last
 

@@ -87,6 +87,8 @@ class ChanceRules:
     volatility_sessions: int
     volatility_minimum: int
     modelled_floor: float
+    walks: int
+    walks_seed: int
     coin: float
 
 
@@ -185,8 +187,10 @@ def _read(root: Node, source: str) -> Codebook:
     classes = root.table("horizon_classes")
     likelihood = root.table("likelihood")
     scales = {key: _scale(node) for key, node in likelihood.tables("scales")}
+    faults = len(root.issues)
     bounds = tuple(_horizon_class(node) for node in classes.rows("bound"))
-    _check_bounds(classes, bounds)
+    if len(root.issues) == faults:
+        _check_bounds(classes, bounds)
     return Codebook(
         name=root.text("name"),
         horizon_words={key: _word(node) for key, node in root.tables("horizon_words")},
@@ -225,7 +229,7 @@ def _horizon_class(node: Node) -> HorizonClass:
 def _check_bounds(node: Node, bounds: tuple[HorizonClass, ...]) -> None:
     months = [b.months for b in bounds]
     inner = [m for m in months[:-1] if m is not None]
-    if not bounds or months[-1] is not None or len(inner) != len(months) - 1:
+    if months[-1] is not None or len(inner) != len(months) - 1:
         node.fault("bound", months, "every class but the last has `months`, the last has none")
     elif inner != sorted(set(inner)):
         node.fault("bound", inner, "bounds that rise from class to class")
@@ -241,11 +245,12 @@ def _scale(node: Node) -> LikelihoodScale:
 
 
 def _kind(node: Node) -> InstrumentKind:
+    faults = len(node.issues)
     scale: Literal["ratio", "difference"] = (
         "ratio" if node.choice("scale", ("ratio", "difference")) == "ratio" else "difference"
     )
     negative = node.flag("negative")
-    if negative and scale == "ratio":
+    if negative and scale == "ratio" and len(node.issues) == faults:
         node.fault("negative", negative, 'false, or scale = "difference"')
     units = node.texts("units", allowed=UNITS)
     return InstrumentKind(scale, negative, node.flag("weekends"), units)
@@ -268,6 +273,8 @@ def _chance(node: Node) -> ChanceRules:
         volatility_sessions=node.integer("volatility_sessions", low=5, high=10_000),
         volatility_minimum=node.integer("volatility_minimum", low=2, high=10_000),
         modelled_floor=node.number("modelled_floor", low=0.0, high=0.25),
+        walks=node.integer("walks", low=100, high=1_000_000),
+        walks_seed=node.integer("walks_seed", low=0, high=2**63 - 1),
         coin=node.number("coin", low=0.0, high=1.0),
     )
 

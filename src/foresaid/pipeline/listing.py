@@ -17,9 +17,10 @@ CALL_COLUMNS = (
     "specificity_class", "direction", "probability", "probability_low", "probability_high",
     "likelihood", "given", "outcome", "reason", "matured", "reference_session",
     "reference_price", "first_session", "deadline", "sessions", "deadline_session",
-    "decided_session", "decided_price", "move_frac", "move_points", "chance", "chance_model",
-    "chance_windows", "chance_hits", "chance_disjoint", "chance_volatility",
-    "chance_modelled", "flags", *(f"alt_{name}" for name in alternate_names()),
+    "decided_session", "decided_price", "move_frac", "move_points", "measured", "chance",
+    "chance_model", "chance_windows", "chance_hits", "chance_disjoint",
+    "chance_volatility", "chance_modelled", "flags",
+    *(f"alt_{name}" for name in alternate_names()),
     "claim_typed", "horizon_typed", "currency", "quote", "outlet", "link", "collection",
     "coder", "coded_at", "revises", "copies", "note",
 )  # fmt: skip

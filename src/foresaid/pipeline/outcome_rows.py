@@ -84,6 +84,7 @@ def outcome_columns() -> tuple[str, ...]:
         "decided_price",
         "move_frac",
         "move_points",
+        "measured",
         "alternates",
         "flags",
         "chance",
@@ -118,6 +119,7 @@ def _result(found: Judgement) -> dict[str, Column]:
         "decided_price": _numbers(decided_price, decided),
         "move_frac": _numbers(fraction, decided & ~windows.additive),
         "move_points": _numbers(move / factor, decided),
+        "measured": _numbers(outcomes.measured, decided),
         "alternates": _alternates(outcomes),
         "flags": _flags(found),
     }

@@ -21,7 +21,7 @@ if TYPE_CHECKING:
     from datetime import date
 
     from foresaid.chance.per_call import Chances
-    from foresaid.claims.registry import Kind
+    from foresaid.claims.kind import Kind
     from foresaid.ledger.store import Ledger
     from foresaid.model.bars import BoolArray, IntArray
     from foresaid.model.codebook import Codebook

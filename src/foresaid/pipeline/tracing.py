@@ -20,7 +20,7 @@ from foresaid.pipeline.settling import judge
 
 if TYPE_CHECKING:
     from foresaid.claims.kernels import Bound
-    from foresaid.claims.registry import Kind
+    from foresaid.claims.kind import Kind
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
     from foresaid.model.records import Instrument
@@ -228,11 +228,17 @@ class _Teller:
         marks = self.judged.outcomes.marks[0]
         if self.row["reference_price"] is None or not np.isfinite(marks[0]):
             return ""
-        texts = [self._mark_text(i, float(marks[i])) for i in range(len(self.kind.marks))]
+        texts = [
+            self._mark_text(i, float(marks[i]))
+            for i, mark in enumerate(self.kind.marks)
+            if self.kind.kernel.bounds or mark.role in ("level", "share")
+        ]
         return "; ".join(texts)
 
     def _mark_text(self, index: int, mark: float) -> str:
         reference = float(self.row["reference_price"])
+        if self.kind.marks[index].role == "share":
+            return f"{100 * mark:.10g} %"
         if bool(self.windows.additive[0]):
             return f"{_price(reference)} {mark:+.10g} = {_price(reference + mark)}"
         price = reference * mark
@@ -256,11 +262,14 @@ class _Teller:
         move = f"{row['move_points']:+.10g}"
         if row["move_frac"] is not None:
             move = f"{100 * row['move_frac']:+.4f} %"
-        tests = "; ".join(self._test(bound, value * scale) for bound in self.kind.kernel.bounds)
-        return (
+        tests = [self._test(bound, value * scale) for bound in self.kind.kernel.bounds]
+        if self.kind.measures:
+            tests.append(f"{self.kind.measures}: {row['measured']:.6g}")
+        whole = (
             f"{self._field_name()} of {row['decided_session']} is {shown}, {move} from the "
-            f"reference {_price(reference)}; {tests}"
+            f"reference {_price(reference)}"
         )
+        return "; ".join([whole, *tests])
 
     def _test(self, bound: Bound, value: float) -> str:
         """Return how the price that decided stands to one mark, in words."""

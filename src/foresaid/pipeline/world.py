@@ -27,7 +27,7 @@ if TYPE_CHECKING:
     from foresaid.model.codebook import Codebook
     from foresaid.model.records import Instrument
 
-MAX_QUANTITIES = 2
+MAX_QUANTITIES = max(len(kind.slots) for kind in KINDS.values())
 CONDITION_OPEN = "its condition is not judged yet"
 OTHER_CURRENCY = "stated in a currency other than the instrument's"
 

@@ -162,7 +162,7 @@ def jeffreys_interval(hits: int, trials: int, *, level: float = 0.95) -> Interva
     --------
     >>> found = jeffreys_interval(7, 10)
     >>> round(found.low, 4), round(found.high, 4)
-    (0.3934, 0.9062)
+    (0.3942, 0.9073)
     >>> jeffreys_interval(0, 10).low
     0.0
     """

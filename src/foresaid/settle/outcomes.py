@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterator
 
     from foresaid.claims.kernels import Judged, Kernel
-    from foresaid.claims.registry import Kind
+    from foresaid.claims.kind import Kind
     from foresaid.market.histories import Market
     from foresaid.model.bars import BoolArray, FloatArray, IntArray, Windows
     from foresaid.model.codebook import SettlementRules
@@ -34,7 +34,7 @@ class CallClaims:
     ----------
     kind : ndarray of str, shape (n,)
         Names of registered kinds.
-    values, units : ndarray, shape (n, 2)
+    values, units : ndarray, shape (n, n_quantities)
         The numbers of the phrases and their unit codes (``claims.binding``).
     blocked : ndarray of str, shape (n,)
         Why a call cannot be settled yet whatever the prices say; empty for most.
@@ -72,6 +72,8 @@ class Outcomes:
         Position of the session that decided, -1 where nothing did.
     value : ndarray of float
         The price that decided, in continuous units, NaN where nothing did.
+    measured : ndarray of float
+        What was compared with the mark (``claims.kernels.Judged``), NaN where nothing did.
     direction : ndarray of str
         up, down or none; empty where the level decides and there is no reference yet.
     alternates : dict of str to ndarray of int
@@ -86,6 +88,7 @@ class Outcomes:
     marks: FloatArray
     decided: IntArray
     value: FloatArray
+    measured: FloatArray
     direction: np.ndarray[Any, np.dtype[np.object_]]
     alternates: dict[str, IntArray]
     tie: BoolArray
@@ -183,6 +186,7 @@ class _Work:
         self.marks = np.full((n, 2), np.nan)
         self.decided = np.full(n, -1, dtype=np.int64)
         self.value = np.full(n, np.nan)
+        self.measured = np.full(n, np.nan)
         self.direction = np.full(n, "", dtype=object)
         self.tie = np.zeros(n, dtype=bool)
         self.alternates = {name: np.full(n, NONE, dtype=np.int64) for name in alternate_names()}
@@ -206,8 +210,7 @@ class _Work:
         bars, tolerance = self.market.bars, self.rules.tolerance
         judged = kind.kernel.judge(bars, windows, marks, tolerance)
         matured = self.resolved.matured[rows]
-        early = {"hit": judged.hit, "miss": ~judged.hit}.get(kind.kernel.early or "")
-        final = matured if early is None else matured | early
+        final = matured | judged.final
         self._keep(rows[final], judged, final)
         self._keep_alternates(kind, rows[matured], windows.take(matured), marks[matured])
 
@@ -231,12 +234,11 @@ class _Work:
         reference = self.market.bars.close[windows.reference]
         sunk = ~windows.additive & (reference <= 0)
         self.leave_rows(rows[sunk], "the reference price is not above zero")
-        here = np.where(windows.additive, 0.0, 1.0)
-        size = np.where(windows.additive, np.abs(reference), 1.0)
-        at_level = np.abs(marks[:, 0] - here) <= self.rules.tolerance * size
-        at_level &= kind.direction == "by level"
-        self.leave_rows(rows[at_level], "the level is the reference price")
-        return ~(sunk | at_level)
+        unfit = kind.kernel.unsound(self.market.bars, windows, marks, self.rules.tolerance)
+        for mask, reason in unfit:
+            self.leave_rows(rows[mask & ~sunk], reason)
+            sunk |= mask
+        return ~sunk
 
     def leave_rows(self, rows: IntArray, reason: str) -> None:
         """Void calls by row number."""
@@ -250,6 +252,7 @@ class _Work:
         self.reason[rows] = ""
         self.decided[rows] = judged.decided[final]
         self.value[rows] = judged.value[final]
+        self.measured[rows] = judged.measured[final]
         self.tie[rows] = judged.tie[final]
 
     def _keep_alternates(
@@ -273,6 +276,7 @@ class _Work:
             marks=self.marks,
             decided=self.decided,
             value=self.value,
+            measured=self.measured,
             direction=self.direction,
             alternates=self.alternates,
             tie=self.tie,

@@ -1,0 +1,219 @@
+"""Kernels that are more than comparisons with a mark: peaks, old lows, volatility, races."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING, Literal
+
+import numpy as np
+
+from foresaid.claims.bounds import BoundKernel, Limits, extreme_of, judge_side, limits_of
+from foresaid.claims.kernels import Bound, Judged, Kernel, On, Over
+
+if TYPE_CHECKING:
+    from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray, Windows
+
+LOOK_BACK = 252  # sessions before the call over which peaks and old extremes are taken
+SESSIONS_A_YEAR = 252
+FEWEST_MOVES = 2  # with one there is no standard deviation
+
+
+def _before(windows: Windows) -> IntArray:
+    """Return the first session of the look-back, shape (n,)."""
+    return np.maximum(windows.floor, windows.reference - LOOK_BACK)
+
+
+@dataclass(frozen=True)
+class DrawdownKernel(Kernel):
+    """A close at or under the running peak times the mark, newly crossed in the window.
+
+    The peak is the highest close from 252 sessions before the reference through the day that
+    is judged. Where the close before the window was under its peak by as much already, the
+    price has to come back before it can cross anew.
+    """
+
+    def judge(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> Judged:
+        """Judge window ``i`` against its own mark; see ``Kernel.judge``.
+
+        All windows are walked session by session at once, longest first, so that the windows
+        still running are always a leading slice.
+        """
+        order = np.argsort(windows.first - windows.last, kind="stable")
+        own, keep = windows.take(order), marks[order, 0]
+        length = own.last - own.first + 1
+        peak, under = self._state_before(bars, own, keep, tolerance)
+        decided, deepest = own.last.copy(), np.zeros(len(own))
+        hit = np.zeros(len(own), dtype=bool)
+        for step in range(int(length.max(initial=0))):
+            live = slice(0, int(np.searchsorted(-length, -step, side="left")))
+            close = bars.close[own.first[live] + step]
+            np.maximum(peak[live], close, out=peak[live])
+            is_under = close <= peak[live] * keep[live] * (1.0 + tolerance)
+            np.maximum(deepest[live], 1.0 - close / peak[live], out=deepest[live])
+            new = is_under & ~under[live] & ~hit[live]
+            decided[live][new] = (own.first[live] + step)[new]
+            hit[live] |= new
+            under[live] = is_under
+        back = np.empty_like(order)
+        back[order] = np.arange(len(order))
+        value = bars.close[decided]
+        final, tie = hit.copy(), np.zeros_like(hit)
+        found = Judged(hit, decided, value, deepest, final, tie)
+        return Judged(*(column[back] for column in vars(found).values()))
+
+    def _state_before(
+        self, bars: Bars, windows: Windows, keep: FloatArray, tolerance: float
+    ) -> tuple[FloatArray, BoolArray]:
+        """Return the peak before the first session, and whether the price was under then."""
+        start, last = _before(windows), windows.first - 1
+        has = last >= start
+        peak = np.full(len(windows), -np.inf)
+        under = np.zeros(len(windows), dtype=bool)
+        rows = np.flatnonzero(has)
+        peak[rows] = extreme_of(bars.close, start[rows], last[rows], largest=True)
+        close = bars.close[last[rows]]
+        under[rows] = close <= peak[rows] * keep[rows] * (1.0 + tolerance)
+        return peak, under
+
+
+@dataclass(frozen=True)
+class OldExtremeKernel(Kernel):
+    """No close beyond the lowest or highest close of the 252 sessions before the call.
+
+    ``side`` is 1 where closes have to stay at or above the old low, -1 where they have to
+    stay at or below the old high.
+    """
+
+    side: Literal[1, -1]
+
+    def judge(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> Judged:
+        """Judge each window against its own old extreme; see ``Kernel.judge``."""
+        del marks
+        last = windows.reference - 1
+        start = np.minimum(_before(windows), np.maximum(last, windows.floor))
+        level = extreme_of(bars.close, start, np.maximum(last, start), largest=self.side < 0)
+        slack = tolerance * np.abs(level)
+        sides = np.full(len(level), self.side, dtype=np.int64)
+        limits = Limits(sides, level, slack, level - slack * self.side)
+        found = judge_side(self._bound, self.side, bars, windows, limits)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            return replace(found, measured=found.value / level - 1.0)
+
+    @property
+    def _bound(self) -> Bound:
+        return Bound(self.side, strict=False, over=Over.ALL, on=On.CLOSE)
+
+    def unsound(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> list[tuple[BoolArray, str]]:
+        """Return where no session before the call is known."""
+        del bars, marks, tolerance
+        return [(windows.reference <= windows.floor, "no price before the call")]
+
+
+@dataclass(frozen=True)
+class VolatilityKernel(Kernel):
+    """Annualised standard deviation of the daily log moves of the window against the mark.
+
+    The moves run from the reference close to the deadline close; ddof 1, 252 sessions a year.
+    Above is strict, below as well.
+    """
+
+    side: Literal[1, -1]
+
+    def judge(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> Judged:
+        """Judge each window's volatility against its own mark; see ``Kernel.judge``."""
+        volatility = window_volatility(bars, windows)
+        gap = (volatility - marks[:, 0]) * self.side
+        slack = tolerance * marks[:, 0]
+        hit = gap > slack
+        never, value = np.zeros_like(hit), bars.close.take(windows.last)
+        return Judged(hit, windows.last, value, volatility, never, np.abs(gap) <= slack)
+
+    def unsound(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> list[tuple[BoolArray, str]]:
+        """Return where the window has too few moves, or a price has no logarithm."""
+        del marks, tolerance
+        few = windows.last - windows.reference < FEWEST_MOVES
+        lowest = extreme_of(bars.close, windows.reference, windows.last, largest=False)
+        return [
+            (few, "too few sessions for a volatility"),
+            (lowest <= 0, "a price at or below zero has no volatility"),
+        ]
+
+
+def window_volatility(bars: Bars, windows: Windows) -> FloatArray:
+    """Return the annualised standard deviation of the daily log moves of each window.
+
+    Shape (n,), as fractions; NaN where there are fewer than two moves. Each window is summed
+    by itself, so that nothing outside it counts.
+    """
+    n = windows.last - windows.reference
+    first = np.minimum(windows.reference + 1, windows.last)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        moves = np.diff(np.log(np.maximum(bars.close, 0.0)), prepend=np.nan)
+    mean = _sum_of(moves, first, windows.last) / np.maximum(n, 1)
+    spread = _sum_of(moves * moves, first, windows.last) - n * mean * mean
+    variance = np.maximum(spread, 0.0) / np.maximum(n - 1, 1)
+    return np.where(n < FEWEST_MOVES, np.nan, np.sqrt(variance * SESSIONS_A_YEAR))
+
+
+def _sum_of(values: FloatArray, first: IntArray, last: IntArray) -> FloatArray:
+    """Return the sum of each stretch, both ends included."""
+    if not len(first):
+        return np.zeros(0)
+    edges = np.empty(2 * len(first), dtype=np.intp)
+    edges[0::2], edges[1::2] = first, last
+    inner = np.add.reduceat(values[: int(last.max()) + 1], edges)[::2]
+    return np.where(last > first, inner, 0.0) + values[last]
+
+
+@dataclass(frozen=True)
+class RaceKernel(Kernel):
+    """The first mark is touched before the second.
+
+    Neither by the deadline is a miss. Where both are touched in the first session that
+    touches either, daily prices cannot tell which came first.
+    """
+
+    def judge(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> Judged:
+        """Judge each window's race; see ``Kernel.judge``."""
+        wanted, other = (self._first_touch(bars, windows, marks, tolerance, i) for i in (0, 1))
+        hit = wanted.hit & (~other.hit | (wanted.decided < other.decided))
+        lost = other.hit & ~hit
+        decided = np.where(hit, wanted.decided, np.where(lost, other.decided, windows.last))
+        value = np.where(hit, wanted.value, np.where(lost, other.value, bars.close[decided]))
+        measured = np.where(hit, wanted.measured, other.measured)
+        return Judged(hit, decided, value, measured, hit | lost, np.zeros_like(hit))
+
+    def _first_touch(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float, mark: int
+    ) -> Judged:
+        bound = Bound(0, strict=False, over=Over.ANY, on=On.RANGE, mark=mark)
+        return BoundKernel((bound,)).judge(bars, windows, marks, tolerance)
+
+    def unsound(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> list[tuple[BoolArray, str]]:
+        """Return where a level is the reference, or both are touched in one session."""
+        reference = bars.close.take(windows.reference)
+        at_level = np.zeros(len(windows), dtype=bool)
+        for mark in (0, 1):
+            bound = Bound(0, strict=False, over=Over.ANY, on=On.RANGE, mark=mark)
+            limits = limits_of(bound, reference, windows, marks, tolerance)
+            at_level |= np.abs(limits.price - reference) <= limits.slack
+        wanted, other = (self._first_touch(bars, windows, marks, tolerance, i) for i in (0, 1))
+        together = wanted.hit & other.hit & (wanted.decided == other.decided)
+        return [
+            (at_level, "the level is the reference price"),
+            (together, "both levels were touched in one session"),
+        ]
