@@ -23,7 +23,7 @@ if TYPE_CHECKING:
 
 NUMBER = re.compile(r"[+-]?(\d{1,3}(,\d{3})+|\d+)(\.\d+)?")
 SIZE = re.compile(r"(?P<number>[+-]?[\d,.]+)(?P<unit>%|pp|bp|pt)?")
-GAP_BEFORE_UNIT = re.compile(r"(?<=\d)\s+(?=(%|pp|bp|pt)(\s|$))")
+GAP_BEFORE_UNIT = re.compile(r"(?<=\d)\s+(?=(%|pp|bp|pt)(\s|$))", re.IGNORECASE)
 EXAMPLES = {"level": ("5000", "5500"), "size": ("5%", "10%"), "percent": ("20%",)}
 
 
@@ -121,6 +121,8 @@ def unit_faults(
     PhraseError or None
         None when every size has a unit the kind knows.
     """
+    if not claim.is_call:
+        return None
     for quantity, slot in zip(claim.quantities, KINDS[claim.kind].slots, strict=True):
         if slot == "percent":
             continue
