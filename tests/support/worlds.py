@@ -107,7 +107,8 @@ def worlds(draw, *, min_size=8, max_size=60, splits=False):
 @st.composite
 def calls_in(draw, world, *, levels=True):
     """A call said somewhere in the history, of any registered kind."""
-    kinds = [k for k in KINDS.values() if levels or "level" not in k.slots]
+    alone = [k for k in KINDS.values() if not k.kernel.needs_legs]
+    kinds = [k for k in alone if levels or "level" not in k.slots]
     kind = draw(st.sampled_from(kinds))
     low = float(np.min(world.low))
     slots = []

@@ -42,6 +42,8 @@ class Starts:
         Whether prices are compared by difference.
     marks : ndarray of float
         Thresholds relative to the reference; NaN in columns the kind does not use.
+    legs : ndarray of int, shape (n, n_legs), or None
+        Numbers of the other instruments that a claim names, -1 for none.
     """
 
     instrument: IntArray
@@ -51,6 +53,7 @@ class Starts:
     lag: IntArray
     additive: BoolArray
     marks: FloatArray
+    legs: IntArray | None = None
 
 
 @dataclass(frozen=True)
@@ -127,7 +130,7 @@ def _fits(
     fit = np.ones((len(marks), len(windows)), dtype=bool)
     for row, own in enumerate(marks):
         shared = np.broadcast_to(own, (len(windows), len(own)))
-        for mask, _ in kernel.unsound(bars, windows, shared, tolerance):
+        for mask, *_ in kernel.unsound(bars, windows, shared, tolerance):
             fit[row] &= ~mask
     return fit
 
@@ -157,9 +160,16 @@ class _Earlier:
 
 
 def _signatures(starts: Starts) -> Iterator[IntArray]:
-    """Yield the rows that share instrument, window length and lag."""
+    """Yield the rows that share instruments, window length and lag."""
     keys = np.stack(
-        [starts.instrument, starts.span, starts.in_sessions, starts.lag, starts.additive]
+        [
+            starts.instrument,
+            starts.span,
+            starts.in_sessions,
+            starts.lag,
+            starts.additive,
+            *(() if starts.legs is None else starts.legs.T),
+        ]
     )
     if keys.shape[1]:
         order = np.lexsort(keys)
@@ -187,5 +197,9 @@ def _earlier_windows(bars: Bars, starts: Starts, rows: IntArray) -> _Earlier | N
         return None
     at, last = at[sound], last[sound]
     additive = np.full(len(at), bool(starts.additive[one]))
-    windows = Windows(np.full(len(at), floor), at, at + int(starts.lag[one]), last, additive)
+    legs = None
+    if starts.legs is not None:
+        legs = np.broadcast_to(starts.legs[one], (len(at), starts.legs.shape[1]))
+    lag = int(starts.lag[one])
+    windows = Windows(np.full(len(at), floor), at, at + lag, last, additive, legs)
     return _Earlier(windows, needs[sound])

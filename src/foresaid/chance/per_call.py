@@ -131,7 +131,7 @@ class _Model:
         """Return the chances by simulation, only where history is short."""
         result = np.full(len(self.deviation), np.nan)
         rows = np.flatnonzero(self.is_short)
-        if len(rows):
+        if len(rows) and not kind.kernel.needs_legs:
             lengths = expected_sessions(self.bars, self.starts)[rows]
             steps = draw_steps(
                 np.random.default_rng(rules.walks_seed),
@@ -194,4 +194,8 @@ def _deviation(bars: Bars, starts: Starts, rules: ChanceRules) -> FloatArray:
 
 
 def _take(starts: Starts, rows: IntArray | BoolArray) -> Starts:
-    return Starts(**{field.name: getattr(starts, field.name)[rows] for field in fields(starts)})
+    kept: dict[str, Any] = {}
+    for field in fields(starts):
+        column = getattr(starts, field.name)
+        kept[field.name] = None if column is None else column[rows]
+    return Starts(**kept)

@@ -18,9 +18,10 @@ LOOK_BACK = 252  # simulated sessions before the reference, for claims that look
 def draw_steps(rng: np.random.Generator, *, paths: int, sessions: int) -> FloatArray:
     """Return standard normal steps, shape (paths, LOOK_BACK + sessions).
 
-    One draw serves all calls, so that a call's chance does not depend on its company.
+    One draw serves all calls. It goes session by session, so that longer walks begin as
+    shorter ones do and a call's chance does not depend on its company.
     """
-    return rng.standard_normal((paths, LOOK_BACK + sessions))
+    return np.ascontiguousarray(rng.standard_normal((LOOK_BACK + sessions, paths)).T)
 
 
 def simulated_chance(
@@ -62,7 +63,7 @@ def simulated_chance(
         )
         own = np.broadcast_to(marks[i], (len(windows), marks.shape[1]))
         fit = np.ones(len(windows), dtype=bool)
-        for mask, _ in kernel.unsound(bars, windows, own, 0.0):
+        for mask, *_ in kernel.unsound(bars, windows, own, 0.0):
             fit &= ~mask
         if fit.mean() > 0.5:
             result[i] = kernel.hits(bars, windows.take(fit), own[fit], 0.0).mean()
@@ -86,10 +87,16 @@ def _walks(moves: FloatArray, *, additive: bool) -> tuple[Bars, Windows]:
         close=close,
         has_range=plain.astype(bool),
         factor=plain,
+        total=close,
+        total_known=np.zeros(paths, dtype=bool),
     )
     floor = offsets[:-1]
     reference = floor + LOOK_BACK - 1
     windows = Windows(
-        floor, reference, reference + 1, offsets[1:] - 1, np.full(paths, additive)
+        floor,
+        reference,
+        reference + 1,
+        offsets[1:] - 1,
+        np.full(paths, additive),
     )
     return bars, windows

@@ -69,8 +69,9 @@ def _mark(
     additive: BoolArray,
 ) -> FloatArray:
     here = np.where(additive, 0.0, 1.0)
-    if mark.role == "here":
-        return here
+    bare = {"here": here, "nothing": np.zeros(len(reference))}
+    if mark.role in bare:
+        return bare[mark.role]
     stated = values[:, mark.quantity]
     if mark.role == "share":
         return stated / 100.0
@@ -79,10 +80,8 @@ def _mark(
         level = stated * level_factor
         return np.where(additive, level - reference, level / divisor)
     size = _size(stated, units[:, mark.quantity], divisor, level_factor)
-    if mark.role == "gain":
-        return here + size
-    if mark.role == "loss":
-        return here - size
+    if mark.role in ("gain", "loss"):
+        return here + size if mark.role == "gain" else here - size
     change = size if mark.role == "gain of thing" else -size
     return np.where(additive, -change, 1.0 / (1.0 + np.where(additive, 0.0, change)))
 

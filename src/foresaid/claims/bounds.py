@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from foresaid.claims.kernels import Bound, Judged, Kernel, On, Over
+from foresaid.claims.kernels import Bound, Judged, Kernel, On, Over, Unfit
 
 if TYPE_CHECKING:
     from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray, Windows
@@ -47,7 +47,7 @@ class BoundKernel(Kernel):
 
     def unsound(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
-    ) -> list[tuple[BoolArray, str]]:
+    ) -> list[Unfit]:
         """Return where the level of a claim without a side is the reference itself."""
         reference = bars.close.take(windows.reference)
         found = []
@@ -55,7 +55,7 @@ class BoundKernel(Kernel):
             if bound.side == 0:
                 limits = limits_of(bound, reference, windows, marks, tolerance)
                 at_level = np.abs(limits.price - reference) <= limits.slack
-                found.append((at_level, "the level is the reference price"))
+                found.append(Unfit(at_level, "the level is the reference price"))
         return found
 
     def outcomes(

@@ -40,6 +40,8 @@ class Claim:
         Name of a registered kind.
     quantities : tuple of Quantity
         The numbers of the phrase, in its order.
+    others : tuple of str
+        Symbols of other instruments that it names, as typed.
     reason : str
         Why a statement is not a call; empty for calls.
     """
@@ -47,6 +49,7 @@ class Claim:
     kind: str
     quantities: tuple[Quantity, ...] = ()
     reason: str = ""
+    others: tuple[str, ...] = ()
 
     @property
     def is_call(self) -> bool:

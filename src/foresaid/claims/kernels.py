@@ -11,7 +11,7 @@ from __future__ import annotations
 from abc import ABC, abstractmethod
 from dataclasses import dataclass
 from enum import Enum
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Literal, NamedTuple
 
 import numpy as np
 
@@ -89,6 +89,14 @@ class Judged:
     tie: BoolArray
 
 
+class Unfit(NamedTuple):
+    """Windows in which a claim cannot be judged: for good (void), or for want of prices."""
+
+    rows: BoolArray
+    reason: str
+    result: Literal["void", "open"] = "void"
+
+
 class Kernel(ABC):
     """One way of judging windows.
 
@@ -96,11 +104,14 @@ class Kernel(ABC):
     ----------
     bounds : tuple of Bound
         The comparisons it consists of, empty where it is more than comparisons.
+    needs_legs : bool
+        Whether it looks at other instruments.
     fits_anywhere : bool
         Whether marks that fit one window fit all: ``unsound`` depends on nothing else.
     """
 
     bounds: tuple[Bound, ...] = ()
+    needs_legs: bool = False
     fits_anywhere: bool = False
 
     @abstractmethod
@@ -117,7 +128,7 @@ class Kernel(ABC):
 
     def unsound(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
-    ) -> list[tuple[BoolArray, str]]:
+    ) -> list[Unfit]:
         """Return which windows give the claim no meaning, with the reason in words."""
         del bars, windows, marks, tolerance
         return []

@@ -10,7 +10,9 @@ if TYPE_CHECKING:
     from foresaid.claims.kernels import Kernel
 
 
-Role = Literal["here", "level", "gain", "loss", "gain of thing", "loss of thing", "share"]
+Role = Literal[
+    "here", "level", "gain", "loss", "gain of thing", "loss of thing", "share", "nothing"
+]
 Direction = Literal["up", "down", "none", "by level"]
 
 SLOT = re.compile(r"\{(\w+)\}")
@@ -23,7 +25,8 @@ class Mark:
     ``here`` is the reference price itself; ``level`` the stated price; ``gain`` and ``loss``
     a size above or below the reference. The two ``of thing`` roles are for instruments that
     are quoted the other way round: the quote moves so that the thing named gains or loses
-    the size. ``share`` is the percentage as a fraction, whatever the reference.
+    the size. ``share`` is the percentage as a fraction, whatever the reference; ``nothing``
+    is zero.
     """
 
     role: Role
@@ -38,7 +41,8 @@ class Kind:
     ----------
     form : str
         The phrase with its slots: ``{level}`` is a price, ``{size}`` a move with its unit,
-        ``{percent}`` a percentage of something else than the price.
+        ``{percent}`` a percentage of something else than the price, ``{instrument}`` another
+        instrument, ``{instruments}`` a list of them at the end.
     reads : str
         When it is true, in words, for help and traces.
     marks : tuple of Mark
@@ -81,9 +85,14 @@ class Kind:
         return tuple(SLOT.findall(self.form))
 
     @property
+    def number_slots(self) -> tuple[str, ...]:
+        """The slots that hold numbers, in order."""
+        return tuple(slot for slot in self.slots if not slot.startswith("instrument"))
+
+    @property
     def is_sized(self) -> bool:
         """Whether the phrase names a size, a level or a range."""
-        return bool(self.slots) or self.names_level
+        return bool(self.number_slots) or self.names_level
 
     @property
     def states_probability(self) -> bool:

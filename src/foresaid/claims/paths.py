@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 
 from foresaid.claims.bounds import BoundKernel, Limits, extreme_of, judge_side, limits_of
-from foresaid.claims.kernels import Bound, Judged, Kernel, On, Over
+from foresaid.claims.kernels import Bound, Judged, Kernel, On, Over, Unfit
 
 if TYPE_CHECKING:
     from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray, Windows
@@ -109,10 +109,10 @@ class OldExtremeKernel(Kernel):
 
     def unsound(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
-    ) -> list[tuple[BoolArray, str]]:
+    ) -> list[Unfit]:
         """Return where no session before the call is known."""
         del bars, marks, tolerance
-        return [(windows.reference <= windows.floor, "no price before the call")]
+        return [Unfit(windows.reference <= windows.floor, "no price before the call")]
 
 
 @dataclass(frozen=True)
@@ -138,14 +138,14 @@ class VolatilityKernel(Kernel):
 
     def unsound(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
-    ) -> list[tuple[BoolArray, str]]:
+    ) -> list[Unfit]:
         """Return where the window has too few moves, or a price has no logarithm."""
         del marks, tolerance
         few = windows.last - windows.reference < FEWEST_MOVES
         lowest = extreme_of(bars.close, windows.reference, windows.last, largest=False)
         return [
-            (few, "too few sessions for a volatility"),
-            (lowest <= 0, "a price at or below zero has no volatility"),
+            Unfit(few, "too few sessions for a volatility"),
+            Unfit(lowest <= 0, "a price at or below zero has no volatility"),
         ]
 
 
@@ -203,7 +203,7 @@ class RaceKernel(Kernel):
 
     def unsound(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
-    ) -> list[tuple[BoolArray, str]]:
+    ) -> list[Unfit]:
         """Return where a level is the reference, or both are touched in one session."""
         reference = bars.close.take(windows.reference)
         at_level = np.zeros(len(windows), dtype=bool)
@@ -214,6 +214,6 @@ class RaceKernel(Kernel):
         wanted, other = (self._first_touch(bars, windows, marks, tolerance, i) for i in (0, 1))
         together = wanted.hit & other.hit & (wanted.decided == other.decided)
         return [
-            (at_level, "the level is the reference price"),
-            (together, "both levels were touched in one session"),
+            Unfit(at_level, "the level is the reference price"),
+            Unfit(together, "both levels were touched in one session"),
         ]

@@ -24,7 +24,15 @@ if TYPE_CHECKING:
 NUMBER = re.compile(r"[+-]?(\d{1,3}(,\d{3})+|\d+)(\.\d+)?")
 SIZE = re.compile(r"(?P<number>[+-]?[\d,.]+)(?P<unit>%|pp|bp|pt)?")
 GAP_BEFORE_UNIT = re.compile(r"(?<=\d)\s+(?=(%|pp|bp|pt)(\s|$))", re.IGNORECASE)
-EXAMPLES = {"level": ("5000", "5500"), "size": ("5%", "10%"), "percent": ("20%",)}
+EXAMPLES = {
+    "level": ("5000", "5500"),
+    "size": ("5%", "10%"),
+    "percent": ("20%",),
+    "instrument": ("ABC",),
+    "instruments": ("ABC, DEF",),
+}
+LIST = "{instruments}"
+OTHERS = ("{instrument}", LIST)
 
 
 @lru_cache(maxsize=100_000)
@@ -71,8 +79,15 @@ def print_claim(claim: Claim) -> str:
     """
     if claim.reason:
         return f"{NOT_A_CALL}: {claim.reason}"
-    texts = iter(print_number(q.value) + q.unit for q in claim.quantities)
-    return SLOT.sub(lambda _: next(texts), KINDS[claim.kind].form)
+    numbers = iter(print_number(q.value) + q.unit for q in claim.quantities)
+    others = iter(claim.others)
+
+    def fill(slot: re.Match[str]) -> str:
+        if slot.group(1) == "instruments":
+            return ", ".join(others)
+        return next(others) if slot.group(1) == "instrument" else next(numbers)
+
+    return SLOT.sub(fill, KINDS[claim.kind].form)
 
 
 def print_number(value: float) -> str:
@@ -123,14 +138,15 @@ def unit_faults(
     """
     if not claim.is_call:
         return None
-    for quantity, slot in zip(claim.quantities, KINDS[claim.kind].slots, strict=True):
+    slots = KINDS[claim.kind].number_slots
+    for quantity, slot in zip(claim.quantities, slots, strict=True):
         if slot == "percent":
             continue
         if slot == "level":
             if quantity.value <= 0 and not instrument_kind.negative:
                 level = print_number(quantity.value)
                 return PhraseError(
-                    f"the level {level} cannot be a price of a {kind_name}",
+                    f"the level {level} cannot be a price of {_with_article(kind_name)}",
                     "Write a level above zero.",
                 )
         elif quantity.unit not in instrument_kind.units:
@@ -144,14 +160,20 @@ def _wrong_unit(
     number = print_number(quantity.value)
     if quantity.unit == "%" and "pp" in instrument_kind.units:
         return PhraseError(
-            f"`{number}%` of a {kind_name} has two readings: {number} percentage points, or "
-            f"{number} percent of its value (at 4.00 that is "
+            f"`{number}%` of {_with_article(kind_name)} has two readings: {number} percentage "
+            f"points, or {number} percent of its value (at 4.00 that is "
             f"{print_number(round(4.0 * quantity.value, 9))}bp)",
             f"Write `{number}pp` for the first, or the second in basis points, such as "
             f"`{print_number(round(4.0 * quantity.value, 9))}bp`.",
         )
     allowed = " or ".join(f"`{number}{unit}`" for unit in instrument_kind.units)
-    return PhraseError(f"a {kind_name} does not move in `{quantity.unit}`", f"Write {allowed}.")
+    return PhraseError(
+        f"{_with_article(kind_name)} does not move in `{quantity.unit}`", f"Write {allowed}."
+    )
+
+
+def _with_article(name: str) -> str:
+    return ("an " if name[:1].lower() in ("a", "e", "i", "o", "u") else "a ") + name
 
 
 def _example(name: str) -> str:
@@ -165,23 +187,33 @@ def _tokens(kind: Kind) -> list[str]:
 def _shape_fits(kind: Kind, words: list[str]) -> bool:
     """Whether the words are those of the form, with something number-like in each slot."""
     tokens = _tokens(kind)
+    if tokens[-1] == LIST and len(words) >= len(tokens):
+        tokens = tokens[:-1] + ["{instrument}"] * (len(words) - len(tokens) + 1)
     return len(tokens) == len(words) and all(
         _fits(token, word) for token, word in zip(tokens, words, strict=True)
     )
 
 
 def _fits(token: str, word: str) -> bool:
+    if token in OTHERS:
+        return True
     if SLOT.fullmatch(token):
         return word[:1] in "+-.0123456789" or word[1:2].isdigit()
     return token == word.lower()
 
 
 def _fill(kind: Kind, words: list[str]) -> Claim:
-    quantities = []
-    for token, word in zip(_tokens(kind), words, strict=True):
+    quantities, others = [], []
+    for at, (token, word) in enumerate(zip(_tokens(kind), words, strict=False)):
         slot = SLOT.fullmatch(token)
-        if slot:
+        if token == LIST:
+            others += " ".join(words[at:]).replace(",", " ").split()
+        elif token in OTHERS:
+            others.append(word)
+        elif slot:
             quantities.append(_READERS[slot.group(1)](word, kind))
+    if len(set(others)) != len(others):
+        raise PhraseError(f"`{words[-1]}` names an instrument twice", "Name each one once.")
     if kind.ascending and quantities[0].value >= quantities[1].value:
         low, high = (print_number(one.value) for one in quantities[:2])
         turned = [] if low == high else [high, low, *words[-1:]]
@@ -189,7 +221,7 @@ def _fill(kind: Kind, words: list[str]) -> Claim:
             f"the range goes from {low} to {high}; the lower level comes first",
             f"Write `{_in_words(kind, turned)}`.",
         )
-    return Claim(kind.name, tuple(quantities))
+    return Claim(kind.name, tuple(quantities), others=tuple(others))
 
 
 def _level(word: str, kind: Kind) -> Quantity:
@@ -307,7 +339,7 @@ def _first_misfit(tokens: list[str], words: list[str]) -> int:
 
 
 def _legal_phrase(kind: Kind, words: Iterable[str]) -> str:
-    """Return the form of ``kind`` with the numbers of ``words``, or others if they are wrong."""
+    """Return the form of ``kind`` with the numbers of ``words``, or others if wrong."""
     phrase = _in_words(kind, words)
     try:
         _fill(kind, phrase.split())
@@ -322,6 +354,8 @@ def _in_words(kind: Kind, words: Iterable[str]) -> str:
     spare = {slot: iter(texts) for slot, texts in EXAMPLES.items()}
 
     def fill(slot: re.Match[str]) -> str:
+        if slot.group(0) in OTHERS:
+            return next(spare[slot.group(1)])
         number = numbers.pop(0) if numbers else next(spare[slot.group(1)])
         has_unit = number[-1:] in "%pbt"
         if slot.group(1) != "level":

@@ -16,6 +16,7 @@ from foresaid.claims.paths import (
     RaceKernel,
     VolatilityKernel,
 )
+from foresaid.claims.relative import RelativeKernel
 
 if TYPE_CHECKING:
     from foresaid.claims.kernels import Kernel
@@ -393,6 +394,53 @@ register(
         VolatilityKernel(-1),
         "none",
         measures="the annualised volatility of the window, as a fraction",
+    )
+)
+
+
+def _relative(form: str, reads: str, side: Literal[1, -1], *, by: bool) -> Kind:
+    """Return a kind that compares returns, with the price returns kept beside."""
+    kernel = RelativeKernel(side, strict=not by)
+    return Kind(
+        form,
+        reads,
+        (SHARE if by else Mark("nothing"),),
+        kernel,
+        "none",
+        {"price_return": RelativeKernel(side, strict=not by, price_only=True)},
+        measures="the return less that of the best of the others, as a fraction",
+    )
+
+
+_RETURNS = "from the reference close to the deadline close, dividends reinvested where known"
+register(
+    _relative("beats {instrument}", f"its return is above the other's, {_RETURNS}", 1, by=False)
+)
+register(
+    _relative(
+        "beats {instrument} by {percent}",
+        f"its return is above the other's by at least that many percentage points, {_RETURNS}",
+        1,
+        by=True,
+    )
+)
+register(
+    _relative("lags {instrument}", f"its return is below the other's, {_RETURNS}", -1, by=False)
+)
+register(
+    _relative(
+        "lags {instrument} by {percent}",
+        f"its return is below the other's by at least that many percentage points, {_RETURNS}",
+        -1,
+        by=True,
+    )
+)
+register(
+    _relative(
+        "tops {instruments}",
+        f"its return is strictly the best of them all, {_RETURNS}",
+        1,
+        by=False,
     )
 )
 

@@ -268,6 +268,12 @@ class _Row(RowReader):
     def _check_units(self, claim: Claim | None, instrument: Instrument | None) -> None:
         if claim is None or instrument is None:
             return
+        for symbol in claim.others:
+            if symbol not in self.context.instruments or symbol == instrument.symbol:
+                close = nearest(symbol, self.context.instruments)
+                message = f"`{clip(symbol)}` is no other known instrument"
+                hint = f"The nearest known is `{close}`." if close else "Import it first."
+                self.fault("claim", "unknown-instrument", message, hint)
         kind = self.context.codebook.instrument_kinds[instrument.kind]
         fault = unit_faults(claim, instrument.kind, kind)
         if fault is not None:

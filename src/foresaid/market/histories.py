@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -23,13 +23,14 @@ if TYPE_CHECKING:
 class PriceHistory:
     """One instrument's prices in the units of the file; arrays (n,), oldest first.
 
-    ``high`` and ``low`` are NaN where the file had none.
+    ``high``, ``low`` and ``total`` are NaN where the file had none.
     """
 
     day: IntArray
     high: FloatArray
     low: FloatArray
     close: FloatArray
+    total: FloatArray | None = None
 
 
 @dataclass(frozen=True)
@@ -86,7 +87,7 @@ class Market:
         plain = price / factor
         with np.errstate(divide="ignore", invalid="ignore"):
             places = np.power(10.0, 11.0 - np.floor(np.log10(np.abs(plain))))
-        kept = np.where(np.isfinite(places), np.round(plain * places) / places, plain)
+            kept = np.where(np.isfinite(places), np.round(plain * places) / places, plain)
         return np.where(factor == 1.0, price, kept)
 
 
@@ -124,7 +125,7 @@ def build_market(
     steps = tuple(factor_steps(by_symbol[one.symbol]) for one in instruments)
     kinds = np.array([series.get(one.symbol, "raw") for one in instruments], dtype=object)
     columns = [
-        _columns(histories.get(one.symbol), step, kind, today)
+        _columns(histories.get(one.symbol), step, kind, by_symbol[one.symbol], today)
         for one, step, kind in zip(instruments, steps, kinds, strict=True)
     ]
     bars = concatenate_bars([one.symbol for one in instruments], columns)
@@ -138,28 +139,63 @@ def build_market(
 
 
 def _columns(
-    history: PriceHistory | None, steps: FactorSteps, kind: str, today: int
-) -> dict[str, FloatArray | IntArray | BoolArray]:
+    history: PriceHistory | None,
+    steps: FactorSteps,
+    kind: str,
+    actions: Sequence[Action],
+    today: int,
+) -> dict[str, Any]:
     if history is None:
-        empty = np.zeros(0)
-        names = ("day", "high", "low", "close", "has_range", "factor")
-        return dict.fromkeys(names, empty)
+        names = ("day", "high", "low", "close", "has_range", "factor", "total")
+        return dict.fromkeys(names, np.zeros(0)) | {"total_known": False}
     day, close = history.day, history.close
     factor = steps.at(day)
     if kind == "split-adjusted":
         # already in the units of the last session, whose factor holds throughout
         factor = np.full(len(day), factor[-1] if len(factor) else 1.0)
     has_range = np.isfinite(history.high) & np.isfinite(history.low)
-    columns: dict[str, FloatArray | IntArray | BoolArray] = {
+    total, total_known = total_return(history, close * factor, steps.at(day), actions, kind)
+    columns: dict[str, Any] = {
         "day": day,
         "high": np.where(has_range, history.high, close) * factor,
         "low": np.where(has_range, history.low, close) * factor,
         "close": close * factor,
         "has_range": has_range,
         "factor": factor,
+        "total": total,
     }
     known = int(np.searchsorted(day, today, side="right"))
-    return {name: column[:known] for name, column in columns.items()}
+    cut = {name: column[:known] for name, column in columns.items()}
+    return cut | {"total_known": total_known}
+
+
+def total_return(
+    history: PriceHistory,
+    close: FloatArray,
+    factor: FloatArray,
+    actions: Sequence[Action],
+    kind: str,
+) -> tuple[FloatArray, bool]:
+    """Return the total-return level of each session, and whether it is known.
+
+    A total column or a total-return series is taken as it is. Otherwise a dividend of ``d``
+    (``factor`` brings it from the units of its day to continuous ones) on its effective
+    session multiplies the level from then on by ``1 + d / close``: it is
+    reinvested at that session's close, so that the level never depends on what came later.
+    Without any dividend on record the level is the close and counts as not known.
+    """
+    if kind == "total-return":
+        return close, True
+    if history.total is not None and np.isfinite(history.total).all() and len(history.total):
+        return history.total, True
+    paid = [one for one in actions if one.kind == "dividend" and one.amount]
+    growth = np.ones(len(close))
+    for one in paid:
+        day = np.datetime64(one.effective, "D").astype(np.int64)
+        at = int(np.searchsorted(history.day, day))
+        if at < len(close) and close[at] > 0:
+            growth[at] *= 1.0 + float(one.amount or 0.0) * factor[at] / close[at]
+    return close * np.cumprod(growth), bool(paid)
 
 
 def _venue(

@@ -39,6 +39,10 @@ class Bars:
         Whether high and low were in the file.
     factor : ndarray of float, shape (n_bars,)
         Continuous price over the price of the day.
+    total : ndarray of float, shape (n_bars,)
+        Total-return level, in any unit; the close where it is not known.
+    total_known : ndarray of bool, shape (n_instruments,)
+        Whether ``total`` holds more than the close.
     """
 
     symbols: tuple[str, ...]
@@ -49,6 +53,8 @@ class Bars:
     close: FloatArray
     has_range: BoolArray
     factor: FloatArray
+    total: FloatArray
+    total_known: BoolArray
 
     @cached_property
     def _table(self) -> tuple[IntArray, IntArray, IntArray, IntArray]:
@@ -166,6 +172,9 @@ class Windows:
         The path window, both ends included; ``last`` is the deadline session.
     additive : ndarray of bool
         Whether prices are compared by difference instead of ratio.
+    legs : ndarray of int, shape (n, n_legs), or None
+        Numbers of the other instruments that a claim names, -1 for none; None where no claim
+        names any.
     """
 
     floor: IntArray
@@ -173,15 +182,18 @@ class Windows:
     first: IntArray
     last: IntArray
     additive: BoolArray
+    legs: IntArray | None = None
 
     def __len__(self) -> int:
         return len(self.reference)
 
     def take(self, rows: Any) -> Windows:  # noqa: ANN401 - any numpy index
         """Return the windows at ``rows`` (a slice, a mask or an index array)."""
-        return Windows(
-            **{field.name: getattr(self, field.name)[rows] for field in fields(self)}
-        )
+        kept: dict[str, Any] = {}
+        for field in fields(self):
+            column = getattr(self, field.name)
+            kept[field.name] = None if column is None else column[rows]
+        return Windows(**kept)
 
 
 def concatenate_bars(symbols: Sequence[str], columns: Sequence[dict[str, Any]]) -> Bars:
@@ -192,7 +204,8 @@ def concatenate_bars(symbols: Sequence[str], columns: Sequence[dict[str, Any]]) 
     symbols : sequence of str, length n
         Names, in order.
     columns : sequence of dict, length n
-        Arrays ``day, high, low, close, has_range, factor`` of each instrument.
+        Arrays ``day, high, low, close, has_range, factor, total`` of each instrument, and the
+        flag ``total_known``.
     """
     lengths = [len(history["day"]) for history in columns]
 
@@ -209,4 +222,6 @@ def concatenate_bars(symbols: Sequence[str], columns: Sequence[dict[str, Any]]) 
         close=flat("close", np.float64),
         has_range=flat("has_range", np.bool_),
         factor=flat("factor", np.float64),
+        total=flat("total", np.float64),
+        total_known=np.array([bool(h["total_known"]) for h in columns], dtype=np.bool_),
     )

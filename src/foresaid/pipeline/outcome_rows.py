@@ -11,6 +11,7 @@ import pandas as pd
 
 from foresaid.claims.kernels import On
 from foresaid.claims.registry import KINDS, NOT_A_CALL
+from foresaid.claims.relative import RelativeKernel
 from foresaid.settle.outcomes import HIT, NONE
 
 if TYPE_CHECKING:
@@ -30,6 +31,7 @@ FLAGS = (
     "date only",
     "hours assumed",
     "no highs and lows",
+    "price return only",
 )
 
 
@@ -196,6 +198,7 @@ def _flags(found: Judgement) -> Column:
         "date only": ~timed,
         "hours assumed": timed & ~hours_known,
         "no highs and lows": _lacks_range(found),
+        "price return only": _lacks_total(found),
     }
     texts = np.full(len(outcomes.result), "", dtype=object)
     for name in FLAGS:
@@ -208,6 +211,19 @@ def _disagrees(outcomes: Outcomes) -> BoolArray:
     result = np.zeros(len(hit), dtype=bool)
     for values in outcomes.alternates.values():
         result |= (values != NONE) & ((values == HIT) != hit)
+    return result
+
+
+def _lacks_total(found: Judgement) -> BoolArray:
+    """Return where a comparison rests on price returns for want of total returns."""
+    kinds, decided = found.calls.claims.kind, found.outcomes.decided >= 0
+    kernels = {kind: KINDS[kind].kernel for kind in set(kinds.tolist())}
+    result = np.zeros(len(kinds), dtype=bool)
+    for kind, kernel in kernels.items():
+        if isinstance(kernel, RelativeKernel):
+            rows = np.flatnonzero((kinds == kind) & decided)
+            own = found.outcomes.resolved.windows.take(rows)
+            result[rows] = ~kernel.uses_total(found.world.market.bars, own)
     return result
 
 

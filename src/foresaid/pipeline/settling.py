@@ -129,6 +129,7 @@ def _chances(
         lag=windows.first - windows.reference,
         additive=windows.additive,
         marks=outcomes.marks,
+        legs=calls.times.legs,
     )
     return chances(
         _groups(calls, fit), bars, starts, codebook.chance, codebook.settlement.tolerance

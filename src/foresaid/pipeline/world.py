@@ -22,14 +22,16 @@ if TYPE_CHECKING:
 
     import pandas as pd
 
+    from foresaid.claims.claim import Claim
     from foresaid.ledger.store import Ledger
-    from foresaid.model.bars import BoolArray
+    from foresaid.model.bars import BoolArray, IntArray
     from foresaid.model.codebook import Codebook
     from foresaid.model.records import Instrument
 
-MAX_QUANTITIES = max(len(kind.slots) for kind in KINDS.values())
+MAX_QUANTITIES = max(len(kind.number_slots) for kind in KINDS.values())
 CONDITION_OPEN = "its condition is not judged yet"
 OTHER_CURRENCY = "stated in a currency other than the instrument's"
+OTHER_CURRENCIES = "compared with an instrument in another currency"
 
 
 @dataclass(frozen=True)
@@ -61,7 +63,7 @@ def load_world(ledger: Ledger, codebook: Codebook, *, as_of: date, vintage: int)
     for begin, end in pairwise(bounds):
         own = slice(int(begin), int(end))
         histories[symbols[int(rows.instrument[begin])]] = PriceHistory(
-            rows.day[own], rows.high[own], rows.low[own], rows.close[own]
+            rows.day[own], rows.high[own], rows.low[own], rows.close[own], rows.total[own]
         )
     instruments = tuple(one for _, one in known.values())
     market = build_market(
@@ -84,14 +86,16 @@ def coded_calls(frame: pd.DataFrame, world: World) -> CodedCalls:
         [text or "1970-01-01" for text in frame["deadline"]], dtype="datetime64[D]"
     )
     sessions = np.array([count or 0 for count in frame["sessions"]], dtype=np.int64)
-    times = CallTimes(number, day, minute, deadline.astype(np.int64), sessions)
+    claims, legs = _claims(frame, [world.instruments[i] for i in number], world)
+    times = CallTimes(number, day, minute, deadline.astype(np.int64), sessions, legs)
     inverse = np.array([one.sense == "inverse" for one in world.instruments], dtype=bool)
-    claims = _claims(frame, [world.instruments[i] for i in number])
     return CodedCalls(frame, times, claims, inverse[number])
 
 
-def _claims(frame: pd.DataFrame, instruments: list[Instrument]) -> CallClaims:
-    """Return what the calls say; each distinct phrase is read once."""
+def _claims(
+    frame: pd.DataFrame, instruments: list[Instrument], world: World
+) -> tuple[CallClaims, IntArray | None]:
+    """Return what the calls say and what they compare; each distinct phrase is read once."""
     phrases, codes = np.unique(frame["claim"].to_numpy(dtype=str), return_inverse=True)
     parsed = [parse_claim(str(phrase)) for phrase in phrases]
     values = np.zeros((len(parsed), MAX_QUANTITIES))
@@ -102,8 +106,37 @@ def _claims(frame: pd.DataFrame, instruments: list[Instrument]) -> CallClaims:
             units[row, column] = UNIT_CODES[quantity.unit]
     kinds = np.array([claim.kind for claim in parsed], dtype=object)
     priced = np.array([_names_a_price(claim.kind) for claim in parsed], dtype=bool)
+    legs = _legs(parsed, world)
     blocked = _blocked(frame, instruments, priced[codes] if len(codes) else priced)
-    return CallClaims(kinds[codes], values[codes], units[codes], blocked)
+    if legs is not None:
+        legs = legs[codes]
+        blocked[(blocked == "") & _differ_in_currency(instruments, legs, world)] = (
+            OTHER_CURRENCIES
+        )
+    return CallClaims(kinds[codes], values[codes], units[codes], blocked), legs
+
+
+def _legs(parsed: list[Claim], world: World) -> IntArray | None:
+    """Return the numbers of the other instruments of each phrase, None where there is none."""
+    width = max((len(claim.others) for claim in parsed), default=0)
+    if not width:
+        return None
+    legs = np.full((len(parsed), width), -1, dtype=np.int64)
+    for row, claim in enumerate(parsed):
+        for column, symbol in enumerate(claim.others):
+            legs[row, column] = world.number[symbol]
+    return legs
+
+
+def _differ_in_currency(
+    instruments: list[Instrument], legs: IntArray, world: World
+) -> BoolArray:
+    """Return where the legs of a comparison are quoted in different currencies."""
+    quoted = np.array([*(one.currency for one in world.instruments), ""], dtype=object)
+    own = np.array([one.currency for one in instruments], dtype=object)[:, None]
+    theirs = quoted[legs]
+    result: BoolArray = np.any((legs >= 0) & (theirs != own), axis=1)
+    return result
 
 
 def _names_a_price(kind: str) -> bool:

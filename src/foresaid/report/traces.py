@@ -12,6 +12,7 @@ ALTERNATE_WORDS = {
     "deadline": "judged at the deadline close alone",
     "any_time": "judged on any high or low of the window",
     "closes": "judged on closes instead of highs and lows",
+    "price_return": "judged on price returns, dividends left aside",
     "close_before": "measured from the close before publication",
 }
 

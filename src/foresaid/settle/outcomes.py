@@ -235,17 +235,17 @@ class _Work:
         sunk = ~windows.additive & (reference <= 0)
         self.leave_rows(rows[sunk], "the reference price is not above zero")
         unfit = kind.kernel.unsound(self.market.bars, windows, marks, self.rules.tolerance)
-        for mask, reason in unfit:
-            self.leave_rows(rows[mask & ~sunk], reason)
+        for mask, reason, result in unfit:
+            self.leave_rows(rows[mask & ~sunk], reason, result)
             sunk |= mask
         return ~sunk
 
-    def leave_rows(self, rows: IntArray, reason: str) -> None:
-        """Void calls by row number."""
+    def leave_rows(self, rows: IntArray, reason: str, result: str = "void") -> None:
+        """Keep calls from being judged, by row number."""
         chosen = np.zeros(len(self.result), dtype=bool)
         chosen[rows] = True
         if len(rows):
-            self.leave(chosen, "void", reason)
+            self.leave(chosen, result, reason)
 
     def _keep(self, rows: IntArray, judged: Judged, final: BoolArray) -> None:
         self.result[rows] = np.where(judged.hit[final], "hit", "miss")

@@ -36,6 +36,8 @@ class CallTimes:
         Calendar deadline; ignored where ``sessions`` is above zero.
     sessions : ndarray of int
         Deadline in sessions after the reference, 0 where it is a date.
+    legs : ndarray of int, shape (n, n_legs), or None
+        Numbers of the other instruments that claims name, -1 for none.
     """
 
     instrument: IntArray
@@ -43,6 +45,7 @@ class CallTimes:
     said_minute: FloatArray
     deadline_day: IntArray
     sessions: IntArray
+    legs: IntArray | None = None
 
 
 @dataclass(frozen=True)
@@ -145,7 +148,8 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         # positions that mean nothing still have to be positions
         reference[odd] = np.minimum(reference[odd], np.maximum(end, floor[odd]))
         first[odd] = np.minimum(first[odd], last[odd])
-    windows = Windows(floor, reference, first, last, market.venue.additive.take(number))
+    additive = market.venue.additive.take(number)
+    windows = Windows(floor, reference, first, last, additive, times.legs)
     return Resolved(windows, sound, running, reason, sound & rolled)
 
 

@@ -232,7 +232,7 @@ def test_units_that_fit(text, kind):
             "a share does not move in `bp`",
             "Write `25%` or `25pt`.",
         ),
-        ("rises 1pp", "index", "a index does not move in `pp`", "Write `1%` or `1pt`."),
+        ("rises 1pp", "index", "an index does not move in `pp`", "Write `1%` or `1pt`."),
         ("falls 3pt", "yield", "a yield does not move in `pt`", "Write `3pp` or `3bp`."),
         (
             "ends above 0",

@@ -20,6 +20,10 @@ def bars_of(*histories):
                 "close": close,
                 "has_range": np.ones(len(days), dtype=bool),
                 "factor": np.ones(len(days)),
+                "total": close,
+                "total_known": False,
+                "total": np.ones(len(days)),
+                "total_known": False,
             }
         )
     return concatenate_bars([f"S{i}" for i in range(len(histories))], columns)
