@@ -24,9 +24,12 @@ def claims(draw, kinds=None):
     """A legal claim of any registered kind, with any numbers it allows."""
     kind = KINDS[draw(st.sampled_from(sorted(kinds or KINDS)))]
     finite = {"allow_nan": False, "allow_infinity": False}
-    quantities = []
+    quantities, others = [], []
+    names = st.lists(st.sampled_from(["ABC", "DE.F", "G-7"]), min_size=1, unique=True)
     for slot in kind.slots:
-        if slot == "level":
+        if slot.startswith("instrument"):
+            others += draw(names)[: 1 if slot == "instrument" else None]
+        elif slot == "level":
             quantities.append(Quantity(draw(st.floats(**finite))))
         elif slot == "percent":
             high = 99.999 if kind.states_probability else 1e6
@@ -40,7 +43,7 @@ def claims(draw, kinds=None):
         if low.value == high.value:
             low, high = Quantity(-1.0), Quantity(1.0)
         quantities = [*sorted((low, high), key=lambda one: one.value), *rest]
-    return Claim(kind.name, tuple(quantities))
+    return Claim(kind.name, tuple(quantities), others=tuple(others))
 
 
 def phrases_in(text):

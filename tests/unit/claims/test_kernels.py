@@ -170,11 +170,13 @@ def test_a_tie_is_an_equal_price_that_fails_a_strict_bound(close, tie, hit):
     assert (judged.tie.tolist(), judged.hit.tolist()) == ([False], [True])
 
 
-@pytest.mark.parametrize(("mark", "unsound"), [(1.0, True), (1.0 + 1e-10, True), (1.001, False)])
+@pytest.mark.parametrize(
+    ("mark", "unsound"), [(1.0, True), (1.0 + 1e-10, True), (1.001, False)]
+)
 def test_a_level_at_the_reference_has_no_side(mark, unsound):
     bars, windows = bars_from([100.0, 101.0]), windows_from([0], [1], [1])
     kernel = BoundKernel((Bound(0, strict=False, over=Over.ANY, on=On.RANGE),))
-    ((mask, reason),) = kernel.unsound(bars, windows, np.array([[mark]]), TOLERANCE)
+    ((mask, reason, _result),) = kernel.unsound(bars, windows, np.array([[mark]]), TOLERANCE)
     assert (mask.tolist(), reason) == ([unsound], "the level is the reference price")
     sided = BoundKernel((Bound(1, strict=False, over=Over.ANY),))
     assert sided.unsound(bars, windows, np.array([[mark]]), TOLERANCE) == []

@@ -45,7 +45,9 @@ SPLIT = Action("ABC", on(12), "split", ratio=4.0)
 
 def test_raw_prices_are_made_continuous():
     found = market(
-        history([10, 11, 12, 13], [80.0, 84.0, 21.5, 22.0], high=[81, 85, 22, 23], low=[80] * 4),
+        history(
+            [10, 11, 12, 13], [80.0, 84.0, 21.5, 22.0], high=[81, 85, 22, 23], low=[80] * 4
+        ),
         actions=[SPLIT],
     )
     assert found.bars.close.tolist() == [80.0, 84.0, 86.0, 88.0]
@@ -85,7 +87,9 @@ def test_what_is_known_by_a_day_does_not_depend_on_later_sessions(series, as_of)
 
 
 def test_missing_highs_and_lows_are_the_close():
-    prices = history([1, 2, 3], [5.0, 6.0, 7.0], high=[5.5, np.nan, 7.5], low=[4.5, 5.5, np.nan])
+    prices = history(
+        [1, 2, 3], [5.0, 6.0, 7.0], high=[5.5, np.nan, 7.5], low=[4.5, 5.5, np.nan]
+    )
     bars = market(prices).bars
     assert bars.has_range.tolist() == [True, False, False]
     assert bars.high.tolist() == [5.5, 6.0, 7.0]

@@ -315,5 +315,7 @@ def test_no_calls_at_all():
         as_of=MONDAY,
     )
     none = np.zeros(0, dtype=np.int64)
-    found = resolve_windows(CallTimes(none, none, none.astype(float), none, none), market, RULES)
+    found = resolve_windows(
+        CallTimes(none, none, none.astype(float), none, none), market, RULES
+    )
     assert len(found.windows) == 0
