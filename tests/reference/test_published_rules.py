@@ -1,5 +1,7 @@
 """Rules of the default codebook against the documents they are taken from."""
 
+from itertools import pairwise
+
 import pytest
 
 from foresaid.model.codebook import default_codebook
@@ -55,4 +57,4 @@ def test_sources_are_named():
 
 def test_the_first_scale_leaves_no_hole_between_its_bands():
     bands = sorted(set(ICD_203.values()))
-    assert all(a[1] == b[0] for a, b in zip(bands, bands[1:], strict=False))
+    assert all(low[1] == high[0] for low, high in pairwise(bands))

@@ -25,8 +25,6 @@ def bars_from(close, *, high=None, low=None, day=None):
         "factor": np.ones(n),
         "total": close,
         "total_known": False,
-        "total": np.ones(n),
-        "total_known": False,
     }
     return concatenate_bars(["ABC"], [history])
 

@@ -213,7 +213,13 @@ def _fill(kind: Kind, words: list[str]) -> Claim:
         elif slot:
             quantities.append(_READERS[slot.group(1)](word, kind))
     if not others and kind.form.endswith(LIST):
-        raise PhraseError(f"`{words[-1]}` names no instrument", f"Write `{_example(kind.name)}`.")
+        raise PhraseError(
+            f"`{words[-1]}` names no instrument", f"Write `{_example(kind.name)}`."
+        )
+    if not others and kind.form.endswith(LIST):
+        raise PhraseError(
+            f"`{words[-1]}` names no instrument", f"Write `{_example(kind.name)}`."
+        )
     if len(set(others)) != len(others):
         raise PhraseError(f"`{words[-1]}` names an instrument twice", "Name each one once.")
     if kind.ascending and quantities[0].value >= quantities[1].value:

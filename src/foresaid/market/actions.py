@@ -17,8 +17,6 @@ if TYPE_CHECKING:
     from foresaid.model.bars import FloatArray, IntArray
     from foresaid.model.records import Action
 
-ENDING = ("cash-out", "merger", "wind-up")
-
 
 @dataclass(frozen=True)
 class FactorSteps:

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from foresaid.market.actions import FactorSteps, factor_steps
+from foresaid.market.endings import are_over, ended_days, ending_of, with_endings
 from foresaid.model.bars import Bars, concatenate_bars
 
 if TYPE_CHECKING:
@@ -61,13 +62,18 @@ class Venue:
 
 @dataclass(frozen=True)
 class Market:
-    """Everything known about prices on one day, in one vintage."""
+    """Everything known about prices on one day, in one vintage.
+
+    ``ended_day`` is when an instrument ended, far in the future for those that go on;
+    ``is_over`` says whether it came to a fixed amount. Both have shape (n_instruments,).
+    """
 
     bars: Bars
     venue: Venue
     steps: tuple[FactorSteps, ...]
-    adjusted: BoolArray
     as_of_day: int
+    ended_day: IntArray
+    is_over: BoolArray
 
     def level_factor(self, instrument: IntArray, day: IntArray) -> FloatArray:
         """Return continuous price over a price stated on that day, shape (n,)."""
@@ -109,7 +115,8 @@ def build_market(
     histories : mapping of str to PriceHistory
         By symbol; an instrument without prices may be absent.
     actions : sequence of Action
-        Splits and rebases become factors; the rest is left to settlement.
+        Splits and rebases become factors, dividends total returns; an instrument that ends
+        goes on at its terms.
     series : mapping of str to str
         What the prices are: raw (the default), split-adjusted or total-return. Split-adjusted
         prices are in the units of the last session of the file.
@@ -124,17 +131,25 @@ def build_market(
         by_symbol[action.instrument].append(action)
     steps = tuple(factor_steps(by_symbol[one.symbol]) for one in instruments)
     kinds = np.array([series.get(one.symbol, "raw") for one in instruments], dtype=object)
-    columns = [
-        _columns(histories.get(one.symbol), step, kind, by_symbol[one.symbol], today)
-        for one, step, kind in zip(instruments, steps, kinds, strict=True)
-    ]
-    bars = concatenate_bars([one.symbol for one in instruments], columns)
+    symbols = [one.symbol for one in instruments]
+    known = {
+        symbol: [one for one in by_symbol[symbol] if one.effective <= as_of]
+        for symbol in symbols
+    }
+    columns = {
+        symbol: _columns(histories.get(symbol), step, kind, known[symbol], today)
+        for symbol, step, kind in zip(symbols, steps, kinds, strict=True)
+    }
+    found = {symbol: ending_of(known[symbol], today=today) for symbol in symbols}
+    endings = {symbol: one for symbol, one in found.items() if one is not None}
+    columns = with_endings(columns, endings, dict(zip(symbols, steps, strict=True)))
     return Market(
-        bars,
+        concatenate_bars(symbols, [columns[symbol] for symbol in symbols]),
         _venue(instruments, kinds == "total-return", codebook),
         steps,
-        np.asarray(kinds == "split-adjusted", dtype=bool),
         today,
+        ended_days(symbols, endings),
+        are_over(symbols, endings),
     )
 
 

@@ -32,6 +32,7 @@ FLAGS = (
     "hours assumed",
     "no highs and lows",
     "price return only",
+    "instrument ended",
 )
 
 
@@ -199,6 +200,7 @@ def _flags(found: Judgement) -> Column:
         "hours assumed": timed & ~hours_known,
         "no highs and lows": _lacks_range(found),
         "price return only": _lacks_total(found),
+        "instrument ended": _has_ended(found),
     }
     texts = np.full(len(outcomes.result), "", dtype=object)
     for name in FLAGS:
@@ -212,6 +214,14 @@ def _disagrees(outcomes: Outcomes) -> BoolArray:
     for values in outcomes.alternates.values():
         result |= (values != NONE) & ((values == HIT) != hit)
     return result
+
+
+def _has_ended(found: Judgement) -> BoolArray:
+    """Return where the terms of an ended instrument stood in for prices."""
+    market, windows = found.world.market, found.outcomes.resolved.windows
+    day = _at(market.bars.day, windows.last)
+    ended = market.ended_day[found.calls.times.instrument]
+    return (found.outcomes.decided >= 0) & (day >= ended)
 
 
 def _lacks_total(found: Judgement) -> BoolArray:

@@ -23,7 +23,7 @@ if TYPE_CHECKING:
     from foresaid.claims.kind import Kind
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
-    from foresaid.model.records import Instrument
+    from foresaid.model.records import Action, Instrument
     from foresaid.pipeline.outcome_rows import Judgement
 
 EPOCH = date(1970, 1, 1)
@@ -209,20 +209,19 @@ class _Teller:
         return bounds[0].over if bounds else None
 
     def _actions(self) -> str:
-        steps = self.market.steps[self.number]
-        if not len(steps.day) or self.row["reference_session"] is None:
-            return "no split or rebase from statement to deadline"
-        said = int(self.judged.calls.times.said_day[0])
-        end = int(self.market.bars.day[self.windows.last[0]])
-        inside = [i for i, day in enumerate(steps.day.tolist()) if said < day <= end]
-        if not inside:
-            return "no split or rebase from statement to deadline"
+        """Return the corporate actions that bear on the result."""
+        if self.row["reference_session"] is None:
+            return "none looked at: there is no reference yet"
+        said = _day(int(self.judged.calls.times.said_day[0]))
+        end = _day(int(self.market.bars.day[self.windows.last[0]]))
         texts = [
-            f"{_day(int(steps.day[i]))}: prices of the day times "
-            f"{_price(steps.product[i + 1] / steps.product[i])} to compare with before"
-            for i in inside
+            _action_text(one)
+            for one in self.judged.world.actions
+            if one.instrument == self.instrument.symbol
+            and said < one.effective <= end
+            and one.kind != "dividend"
         ]
-        return "; ".join(texts)
+        return "; ".join(texts) or "none from statement to deadline but dividends"
 
     def _threshold(self) -> str:
         marks = self.judged.outcomes.marks[0]
@@ -332,6 +331,20 @@ class _Teller:
             return f"{chance}: no earlier window; {model}"
         weight = row["chance_disjoint"] / self.book.chance.enough_windows
         return f"{chance}: {counted}; {model}; weight {weight:.3g} on the first"
+
+
+def _action_text(action: Action) -> str:
+    numbers = {
+        "ratio": action.ratio and _price(action.ratio),
+        "amount": action.amount is not None and _price(action.amount),
+        "into": action.into,
+    }
+    said = ", ".join(f"{name} {value}" for name, value in numbers.items() if value)
+    text = f"{action.effective}: {action.kind}" + (f" ({said})" if said else "")
+    if action.kind in ("split", "rebase") and action.ratio:
+        factor = action.ratio if action.kind == "split" else 1.0 / action.ratio
+        text += f"; prices from then on times {_price(factor)} to compare with before"
+    return text
 
 
 def _day(number: int) -> date:

@@ -26,7 +26,7 @@ if TYPE_CHECKING:
     from foresaid.ledger.store import Ledger
     from foresaid.model.bars import BoolArray, IntArray
     from foresaid.model.codebook import Codebook
-    from foresaid.model.records import Instrument
+    from foresaid.model.records import Action, Instrument
 
 MAX_QUANTITIES = max(len(kind.number_slots) for kind in KINDS.values())
 CONDITION_OPEN = "its condition is not judged yet"
@@ -41,6 +41,7 @@ class World:
     market: Market
     instruments: tuple[Instrument, ...]
     number: dict[str, int]
+    actions: tuple[Action, ...]
 
 
 @dataclass(frozen=True)
@@ -66,15 +67,17 @@ def load_world(ledger: Ledger, codebook: Codebook, *, as_of: date, vintage: int)
             rows.day[own], rows.high[own], rows.low[own], rows.close[own], rows.total[own]
         )
     instruments = tuple(one for _, one in known.values())
+    actions = queries.actions(ledger, vintage=vintage)
     market = build_market(
         instruments,
         histories,
-        queries.actions(ledger, vintage=vintage),
+        actions,
         queries.series_kinds(ledger, vintage=vintage),
         codebook,
         as_of=as_of,
     )
-    return World(market, instruments, {one.symbol: i for i, one in enumerate(instruments)})
+    number = {one.symbol: i for i, one in enumerate(instruments)}
+    return World(market, instruments, number, tuple(actions))
 
 
 def coded_calls(frame: pd.DataFrame, world: World) -> CodedCalls:

@@ -120,10 +120,11 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
     dated = times.sessions == 0
     if is_due_beyond.any():
         _weekends_may_pass(reached, times, market)
+        reached |= market.is_over[number]
     if not dated.all():
         end = bars.last_position[number]
         last = np.where(dated, last, reference + times.sessions)
-        reached = np.where(dated, reached, last <= end)
+        reached = np.where(dated, reached, (last <= end) | market.is_over[number])
         last = np.minimum(last, end)
         rolled &= dated
     sound = (last > reference) & reached & begun
@@ -132,6 +133,7 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
     if bars.longest_gap > rules.roll_back_days:
         far = np.flatnonzero(rolled & sound)
         far = far[times.deadline_day[far] - bars.day[last[far]] > rules.roll_back_days]
+        far = far[~market.is_over[number[far]]]
         sound[far], reason[far] = False, NO_DEADLINE_PRICE
     odd = np.flatnonzero(~sound & (reason == FINE))
     if len(odd):

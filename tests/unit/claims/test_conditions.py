@@ -5,7 +5,6 @@ import pytest
 from foresaid.claims.claim import PhraseError
 from foresaid.claims.conditions import HINT, Condition, parse_condition
 from foresaid.claims.phrases import parse_claim
-
 from support.phrases import phrases_in
 
 SAID = date(2025, 1, 2)

@@ -9,7 +9,6 @@ from hypothesis import strategies as st
 from foresaid.claims.claim import PhraseError
 from foresaid.claims.horizons import FORMS, Horizon, add_months, parse_horizon
 from foresaid.model.codebook import default_codebook
-
 from support.phrases import phrases_in
 
 BOOK = default_codebook()
@@ -201,10 +200,13 @@ def test_faults(typed, message, hint):
 
 @given(st.text(max_size=20), st.dates(date(1950, 1, 1), date(2150, 1, 1)))
 def test_whatever_is_typed_is_a_horizon_or_a_fault(text, said):
+    fault, found = None, None
     try:
         found = read(text, said)
-    except PhraseError as fault:
+    except PhraseError as raised:
+        fault = raised
+    if found is None:
         assert fault.hint
-    else:
-        assert (found.deadline is None) != (found.sessions is None)
-        assert found.deadline is None or found.deadline >= said
+        return
+    assert (found.deadline is None) != (found.sessions is None)
+    assert found.deadline is None or found.deadline >= said

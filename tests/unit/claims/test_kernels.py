@@ -1,12 +1,11 @@
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from foresaid.claims.bounds import BoundKernel, at_any_time, at_deadline, extreme_of, on_closes
 from foresaid.claims.kernels import Bound, Kernel, On, Over
 from foresaid.claims.registry import KINDS
-
 from support.windows import TOLERANCE, bars_from, coarse_bars, windows_from, windows_in
 
 BOUNDED = sorted(name for name, kind in KINDS.items() if isinstance(kind.kernel, BoundKernel))
@@ -91,6 +90,7 @@ def test_what_is_final_stays_so_in_every_longer_window(data, bound):
 
 
 @pytest.mark.parametrize("kind", with_inverse(sorted(KINDS)), ids=lambda k: k.form)
+@settings(max_examples=15)
 @given(data=st.data())
 def test_hits_and_judge_and_outcomes_agree_for_every_kind(kind, data):
     bars = data.draw(coarse_bars())

@@ -10,7 +10,6 @@ from foresaid.claims.kind import Kind, Mark
 from foresaid.claims.phrases import legal_forms, parse_claim, print_claim
 from foresaid.claims.registry import KINDS, NOT_A_CALL, register
 from foresaid.settle.outcomes import settle_calls
-
 from support.phrases import registered
 from support.windows import bars_from, windows_from
 from support.worlds import BOOK, OneCall, SmallWorld, arrays_of, market_of

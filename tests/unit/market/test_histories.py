@@ -54,7 +54,6 @@ def test_raw_prices_are_made_continuous():
     assert found.bars.high.tolist() == [81.0, 85.0, 88.0, 92.0]
     assert found.bars.factor.tolist() == [1.0, 1.0, 4.0, 4.0]
     assert found.bars.has_range.all()
-    assert not found.adjusted[0]
 
 
 def test_adjusted_prices_have_the_factor_of_the_last_session():
@@ -66,7 +65,6 @@ def test_adjusted_prices_have_the_factor_of_the_last_session():
     )
     assert adjusted.bars.close.tolist() == raw.bars.close.tolist()
     assert adjusted.bars.factor.tolist() == [4.0] * 4
-    assert adjusted.adjusted[0]
     # a level said on a day is in the units of that day, whatever the file is in
     day = np.array([11, 12])
     none = np.zeros(2, dtype=np.int64)

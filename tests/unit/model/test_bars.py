@@ -22,8 +22,6 @@ def bars_of(*histories):
                 "factor": np.ones(len(days)),
                 "total": close,
                 "total_known": False,
-                "total": np.ones(len(days)),
-                "total_known": False,
             }
         )
     return concatenate_bars([f"S{i}" for i in range(len(histories))], columns)
