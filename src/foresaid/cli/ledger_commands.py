@@ -163,7 +163,8 @@ def _show_settled(done: Settled, form: Format) -> None:
         Column(f"as of {done.as_of}", lambda row: str(row["result"]), "left"),
         Column("calls", lambda row: str(row["calls"])),
     ]
-    console().print(make_table(columns, rows))
+    screen = console()
+    screen.print(make_table(columns, rows, width=screen.width))
 
 
 def demo(

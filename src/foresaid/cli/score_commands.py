@@ -43,7 +43,8 @@ def calls(
     if format_ is not Format.table:
         give_out(rows, CALL_COLUMNS, format_)
         return
-    console().print(make_table(call_columns(), rows))
+    screen = console()
+    screen.print(make_table(call_columns(), rows, width=screen.width))
     say(f"{len(rows)} calls.")
 
 
@@ -111,11 +112,12 @@ def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) 
         return
     screen = console()
     shown = tables.score_columns(keys, has_weights=weighted)
-    screen.print(tables.make_table(shown, scores.rows))
+    screen.print(tables.make_table(shown, scores.rows, width=screen.width))
     screen.print(f"\n{tables.SCORE_GUIDE}\n")
     beside = [row for row in scores.rows if tables.has_something_beside(row)]
     if beside:
-        screen.print(tables.make_table(tables.beside_columns(keys), beside))
+        columns = tables.beside_columns(keys)
+        screen.print(tables.make_table(columns, beside, width=screen.width))
         screen.print(f"\n{tables.BESIDE_GUIDE}\n")
     for text in CAUTIONS:
         screen.print(text)

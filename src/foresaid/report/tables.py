@@ -18,18 +18,35 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True)
 class Column:
-    """One column: its heading, how a row becomes its text, and on which side it stands."""
+    """One column: its heading, how a row becomes its text, and how it stands.
+
+    A column that wraps gives way on a narrow screen, so that the others stay whole.
+    """
 
     heading: str
     text: Callable[[dict[str, Any]], str]
     justify: JustifyMethod = "right"
+    wraps: bool = False
 
 
-def make_table(columns: Sequence[Column], rows: Iterable[dict[str, Any]]) -> Table:
-    """Return a ruled table; text from the ledger is shown as it is, never as markup."""
-    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
+NARROW = 100
+LEAST = 9  # characters that a column which gives way keeps
+
+
+def make_table(
+    columns: Sequence[Column], rows: Iterable[dict[str, Any]], *, width: int
+) -> Table:
+    """Return a table for a screen of that width; text from the ledger is never markup."""
+    gap = 1 if width < NARROW else 2
+    table = Table(box=None, pad_edge=False, padding=(0, gap, 0, 0), header_style="bold")
     for column in columns:
-        table.add_column(column.heading, justify=column.justify, overflow="fold")
+        table.add_column(
+            column.heading,
+            justify=column.justify,
+            overflow="fold",
+            no_wrap=not column.wraps,
+            min_width=LEAST if column.wraps else None,
+        )
     for row in rows:
         table.add_row(*(Text(column.text(row)) for column in columns))
     return table
@@ -57,12 +74,12 @@ def p_value(value: float | None) -> str:
     Examples
     --------
     >>> p_value(0.0312), p_value(3e-9), p_value(0.62)
-    ('0.031', '< 0.0001', '0.62')
+    ('0.031', '<0.0001', '0.62')
     """
     if value is None:
         return "–"
     if value < 1e-4:
-        return "< 0.0001"
+        return "<0.0001"
     digits = 2 if value >= 0.1 else 3 if value >= 0.01 else 4
     return f"{value:.{digits}f}"
 
@@ -71,7 +88,7 @@ def _interval(row: dict[str, Any]) -> str:
     if row["hit_rate"] is None:
         return "–"
     low, high = 100 * row["hit_low"], 100 * row["hit_high"]
-    return f"{100 * row['hit_rate']:.0f} % ({low:.0f} to {high:.0f})"
+    return f"{100 * row['hit_rate']:.0f} ({low:.0f} to {high:.0f})"
 
 
 def _by_chance(row: dict[str, Any]) -> str:
@@ -97,15 +114,15 @@ def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
     columns = [
         *_keys(keys),
         Column("right", lambda row: f"{row['hits']} of {row['n']}"),
-        Column("rate (interval)", _interval),
-        Column("by chance", _by_chance),
+        Column("in % (interval)", _interval),
+        Column("chance", _by_chance),
         Column("p coin", lambda row: p_value(row["p_coin"])),
         Column("p base", lambda row: p_value(row["p_base"])),
         Column("apart", lambda row: str(row["n_effective"])),
     ]
     if has_weights:
         columns.append(Column("weighted", lambda row: fraction(row["weighted_hit_rate"])))
-    columns.append(Column("verdict", lambda row: row["verdict"], "left"))
+    columns.append(Column("verdict", lambda row: row["verdict"], "left", wraps=True))
     return columns
 
 
@@ -122,7 +139,7 @@ def beside_columns(keys: Sequence[str]) -> list[Column]:
         Column("void", count("void")),
         Column("early", count("early")),
         Column("undated right", _imputed),
-        Column("with probability", count("n_probability")),
+        Column("stated", count("n_probability")),
         Column("Brier", lambda row: decimal(row["brier"])),
         Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),
     ]
@@ -135,15 +152,21 @@ def has_something_beside(row: dict[str, Any]) -> bool:
 
 
 SCORE_GUIDE = (
-    "right: calls that came right, of all that matured with a stated date. by chance: how many "
+    "right: calls that came right, of all that matured with a stated date. chance: how many "
     "would have with no skill, from each market's own past. p: how often luck alone does as "
     "well or better, against a coin and against that past. apart: windows without overlap."
 )
 BESIDE_GUIDE = (
     "Outside the rates: open and void calls, calls settled early whose date has not come, and "
-    "calls without a stated date. Brier: mean squared distance of stated probabilities, 0 is "
+    "calls without a stated date. stated: calls with a probability. Brier: mean squared "
+    "distance of stated probabilities and outcomes, 0 is "
     "best; skill: how much of the Brier score of chance is saved."
 )
+
+
+def _outcome(row: dict[str, Any]) -> str:
+    said = row["outcome"] or "not settled"
+    return f"{said}: {row['reason']}" if row["reason"] else said
 
 
 def call_columns() -> list[Column]:
@@ -157,12 +180,10 @@ def call_columns() -> list[Column]:
         Column("forecaster", text("forecaster"), "left"),
         Column("said", lambda row: row["said_at"][:10], "left"),
         Column("instrument", text("instrument"), "left"),
-        Column("claim", text("claim"), "left"),
-        Column("horizon", text("horizon"), "left"),
-        Column("outcome", lambda row: row["outcome"] or "not settled", "left"),
-        Column("decided", text("decided_session"), "left"),
+        Column("claim", text("claim"), "left", wraps=True),
+        Column("horizon", text("horizon"), "left", wraps=True),
         Column("chance", lambda row: fraction(row["chance"])),
-        Column("why", text("reason"), "left"),
+        Column("outcome", _outcome, "left", wraps=True),
     ]
 
 
