@@ -46,7 +46,7 @@ STATISTICS = [
 ]
 
 
-@pytest.mark.parametrize(("name", "function"), STATISTICS, ids=[name for name, _ in STATISTICS])
+@pytest.mark.parametrize(("name", "function"), STATISTICS, ids=[n for n, _ in STATISTICS])
 @pytest.mark.parametrize(
     "section", ["Parameters", "Returns", "Raises", "References", "Examples"]
 )

@@ -5,21 +5,27 @@ Registering a kind here is all that a new kind takes.
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Literal
-
-from foresaid.claims.bounds import BoundKernel, at_any_time, at_deadline, on_closes
 from foresaid.claims.kernels import Bound, On, Over
-from foresaid.claims.kind import Direction, Kind, Mark
+from foresaid.claims.kind import Kind, Mark
 from foresaid.claims.paths import (
     DrawdownKernel,
     OldExtremeKernel,
     RaceKernel,
     VolatilityKernel,
 )
-from foresaid.claims.relative import RelativeKernel
-
-if TYPE_CHECKING:
-    from foresaid.claims.kernels import Kernel
+from foresaid.claims.shapes import (
+    GAIN,
+    HERE,
+    LEVEL,
+    LOSS,
+    SHARE,
+    between_kind,
+    end_kind,
+    path_kind,
+    returns_kind,
+    sense_kind,
+    target_kind,
+)
 
 KINDS: dict[str, Kind] = {}
 
@@ -38,51 +44,8 @@ def register(kind: Kind) -> Kind:
     return kind
 
 
-def _end(side: Literal[1, -1], *, strict: bool, mark: int = 0) -> Bound:
-    return Bound(side, strict=strict, over=Over.END, mark=mark)
-
-
-def _end_kind(form: str, reads: str, mark: Mark, side: Literal[1, -1], *, strict: bool) -> Kind:
-    """Return a kind judged on the deadline close, with its touch kept beside."""
-    kernel = BoundKernel((_end(side, strict=strict),))
-    other: dict[str, Kernel] = {}
-    if mark.role != "here":
-        other["any_time"] = at_any_time(kernel)
-    direction: Direction = "up" if side > 0 else "down"
-    return Kind(form, reads, (mark,), kernel, direction, other)
-
-
-def _path_kind(form: str, reads: str, mark: Mark, bound: Bound) -> Kind:
-    """Return a kind judged along the path, with the end and the closes kept beside."""
-    kernel = BoundKernel((bound,))
-    other: dict[str, Kernel] = {"deadline": at_deadline(kernel)}
-    if bound.on is On.RANGE:
-        other["closes"] = on_closes(kernel)
-    elif bound.over is Over.ANY:
-        other["any_time"] = at_any_time(kernel)
-    directions: dict[int, Direction] = {1: "up", -1: "down", 0: "by level"}
-    return Kind(form, reads, (mark,), kernel, directions[bound.side], other)
-
-
-def _between(form: str, reads: str, marks: tuple[Mark, Mark], over: Over) -> Kind:
-    on = On.CLOSE if over is Over.END else On.RANGE
-    kernel = BoundKernel(
-        (
-            Bound(1, strict=False, over=over, on=on, mark=0),
-            Bound(-1, strict=False, over=over, on=on, mark=1),
-        )
-    )
-    other: dict[str, Kernel] = {}
-    if over is Over.ALL:
-        other = {"deadline": at_deadline(kernel), "closes": on_closes(kernel)}
-    ascending = marks[0].role == "level"
-    return Kind(form, reads, marks, kernel, "none", other, ascending=ascending)
-
-
-HERE, LEVEL, GAIN, LOSS = Mark("here"), Mark("level"), Mark("gain"), Mark("loss")
-
 register(
-    _end_kind(
+    end_kind(
         "ends higher",
         "the deadline close is above the reference; an equal close is a miss",
         HERE,
@@ -91,7 +54,7 @@ register(
     )
 )
 register(
-    _end_kind(
+    end_kind(
         "ends lower",
         "the deadline close is below the reference; an equal close is a miss",
         HERE,
@@ -100,7 +63,7 @@ register(
     )
 )
 register(
-    _end_kind(
+    end_kind(
         "ends higher by {size}",
         "the deadline close is above the reference by at least the size",
         GAIN,
@@ -109,7 +72,7 @@ register(
     )
 )
 register(
-    _end_kind(
+    end_kind(
         "ends lower by {size}",
         "the deadline close is below the reference by at least the size",
         LOSS,
@@ -119,21 +82,8 @@ register(
 )
 
 
-def _sense_kind(form: str, reads: str, direct: Kind, inverse: Kind) -> Kind:
-    """Return a kind that follows the instrument's sense."""
-    return Kind(
-        form,
-        reads,
-        direct.marks,
-        direct.kernel,
-        direct.direction,
-        direct.alternates,
-        inverse=inverse,
-    )
-
-
 register(
-    _sense_kind(
+    sense_kind(
         "strengthens",
         "the thing named has gained at the deadline close: `ends higher`, or "
         "`ends lower` where a lower quote is a gain",
@@ -142,7 +92,7 @@ register(
     )
 )
 register(
-    _sense_kind(
+    sense_kind(
         "weakens",
         "the thing named has lost at the deadline close: `ends lower`, or "
         "`ends higher` where a higher quote is a loss",
@@ -151,11 +101,11 @@ register(
     )
 )
 register(
-    _sense_kind(
+    sense_kind(
         "strengthens by {size}",
         "the thing named has gained at least the size at the deadline close",
         KINDS["ends higher by"],
-        _end_kind(
+        end_kind(
             "ends lower by {size}",
             "the quote has fallen so far that the thing named has gained at least the size",
             Mark("gain of thing"),
@@ -165,11 +115,11 @@ register(
     )
 )
 register(
-    _sense_kind(
+    sense_kind(
         "weakens by {size}",
         "the thing named has lost at least the size at the deadline close",
         KINDS["ends lower by"],
-        _end_kind(
+        end_kind(
             "ends higher by {size}",
             "the quote has risen so far that the thing named has lost at least the size",
             Mark("loss of thing"),
@@ -180,7 +130,7 @@ register(
 )
 
 register(
-    _between(
+    between_kind(
         "ends within {size}",
         "the deadline close is off the reference by at most the size",
         (LOSS, GAIN),
@@ -188,17 +138,17 @@ register(
     )
 )
 register(
-    _end_kind(
+    end_kind(
         "ends above {level}", "the deadline close is above the level", LEVEL, 1, strict=True
     )
 )
 register(
-    _end_kind(
+    end_kind(
         "ends below {level}", "the deadline close is below the level", LEVEL, -1, strict=True
     )
 )
 register(
-    _end_kind(
+    end_kind(
         "ends at least {level}",
         "the deadline close is at or above the level",
         LEVEL,
@@ -207,7 +157,7 @@ register(
     )
 )
 register(
-    _end_kind(
+    end_kind(
         "ends at most {level}",
         "the deadline close is at or below the level",
         LEVEL,
@@ -216,7 +166,7 @@ register(
     )
 )
 register(
-    _between(
+    between_kind(
         "ends between {level} and {level}",
         "the deadline close is in the range, ends included",
         (LEVEL, Mark("level", 1)),
@@ -225,7 +175,7 @@ register(
 )
 
 register(
-    _path_kind(
+    path_kind(
         "closes above {level}",
         "any close in the window is above the level",
         LEVEL,
@@ -233,7 +183,7 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "closes below {level}",
         "any close in the window is below the level",
         LEVEL,
@@ -241,7 +191,7 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "touches {level}",
         "a high at or above the level, or a low at or below "
         "it, whichever lies beyond the reference",
@@ -250,7 +200,7 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "trades above {level}",
         "any high in the window is above the level",
         LEVEL,
@@ -258,7 +208,7 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "trades below {level}",
         "any low in the window is below the level",
         LEVEL,
@@ -266,7 +216,7 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "stays above {level}",
         "no low in the window is below the level",
         LEVEL,
@@ -274,7 +224,7 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "stays below {level}",
         "no high in the window is above the level",
         LEVEL,
@@ -282,7 +232,7 @@ register(
     )
 )
 register(
-    _between(
+    between_kind(
         "stays between {level} and {level}",
         "no low and no high in the window is outside the range",
         (LEVEL, Mark("level", 1)),
@@ -290,7 +240,7 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "rises {size}",
         "any close in the window is above the reference by at least the size",
         GAIN,
@@ -298,15 +248,13 @@ register(
     )
 )
 register(
-    _path_kind(
+    path_kind(
         "falls {size}",
         "any close in the window is below the reference by at least the size",
         LOSS,
         Bound(-1, strict=False, over=Over.ANY),
     )
 )
-
-SHARE = Mark("share")
 
 register(
     Kind(
@@ -352,21 +300,9 @@ register(
 )
 
 
-def _target() -> Kind:
-    kernel = BoundKernel((Bound(0, strict=False, over=Over.END),))
-    return Kind(
-        "targets {level}",
-        "the deadline close is at the level or beyond it, as seen from the reference",
-        (LEVEL,),
-        kernel,
-        "by level",
-        {"any_time": at_any_time(kernel)},
-    )
-
-
-register(_target())
+register(target_kind())
 register(
-    _between(
+    between_kind(
         "range {level} to {level} at {percent}",
         "the deadline close is in the range, ends included; the percentage is the stated "
         "probability of that",
@@ -398,47 +334,33 @@ register(
 )
 
 
-def _relative(form: str, reads: str, side: Literal[1, -1], *, by: bool) -> Kind:
-    """Return a kind that compares returns, with the price returns kept beside."""
-    kernel = RelativeKernel(side, strict=not by)
-    return Kind(
-        form,
-        reads,
-        (SHARE if by else Mark("nothing"),),
-        kernel,
-        "none",
-        {"price_return": RelativeKernel(side, strict=not by, price_only=True)},
-        measures="the return less that of the best of the others, as a fraction",
-    )
-
-
-_RETURNS = "from the reference close to the deadline close, dividends reinvested where known"
+_SPAN = "from the reference close to the deadline close, dividends reinvested where known"
 register(
-    _relative("beats {instrument}", f"its return is above the other's, {_RETURNS}", 1, by=False)
+    returns_kind("beats {instrument}", f"its return is above the other's, {_SPAN}", 1, by=False)
 )
 register(
-    _relative(
+    returns_kind(
         "beats {instrument} by {percent}",
-        f"its return is above the other's by at least that many percentage points, {_RETURNS}",
+        f"its return is above the other's by at least that many percentage points, {_SPAN}",
         1,
         by=True,
     )
 )
 register(
-    _relative("lags {instrument}", f"its return is below the other's, {_RETURNS}", -1, by=False)
+    returns_kind("lags {instrument}", f"its return is below the other's, {_SPAN}", -1, by=False)
 )
 register(
-    _relative(
+    returns_kind(
         "lags {instrument} by {percent}",
-        f"its return is below the other's by at least that many percentage points, {_RETURNS}",
+        f"its return is below the other's by at least that many percentage points, {_SPAN}",
         -1,
         by=True,
     )
 )
 register(
-    _relative(
+    returns_kind(
         "tops {instruments}",
-        f"its return is strictly the best of them all, {_RETURNS}",
+        f"its return is strictly the best of them all, {_SPAN}",
         1,
         by=False,
     )

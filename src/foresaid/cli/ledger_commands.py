@@ -148,6 +148,43 @@ def settle(
     _show_settled(done, format_)
 
 
+class Answer(StrEnum):
+    """Whether a condition has come true."""
+
+    met = "met"
+    not_met = "not-met"
+
+
+def decide(
+    ref: Annotated[str, typer.Argument(metavar="REF", help="The call's ref.")],
+    answer: Annotated[
+        Answer, typer.Argument(metavar="met|not-met", help="Whether the fact came true.")
+    ],
+    ledger: LedgerPath,
+    at: Annotated[
+        str, typer.Option("--at", help="When it came true, or when it was clear it had not.")
+    ],
+    evidence: Annotated[str, typer.Option("--evidence", help="How anyone can check it.")],
+    who: Annotated[str, typer.Option("--who", help="Who decided.")] = "",
+) -> None:
+    """Decide whether the plain fact on which a call depends has come true.
+
+    The call's clock starts at that time. A later decision about the same call stands in for
+    an earlier one; both stay in the ledger.
+
+    Example: foresaid decide C-0412 met --at 2025-03-14 --evidence "Gazette no. 12, page 3"
+    """
+    from foresaid.ledger.store import Ledger
+    from foresaid.pipeline.deciding import DecisionRequest, decide_condition
+
+    request = DecisionRequest(
+        ref, answer is Answer.met, at, who, evidence, today=today(), at=now()
+    )
+    with Ledger.open(ledger) as opened:
+        condition = decide_condition(opened, request)
+    say(f"{ref}: {condition}: {answer.value}. Next: foresaid settle")
+
+
 def _show_settled(done: Settled, form: Format) -> None:
     from foresaid.cli.console import console, give_out
     from foresaid.report.tables import Column, make_table
@@ -204,4 +241,5 @@ def add_to(app: typer.Typer) -> None:
     app.command("demo")(demo)
     app.command("new")(new)
     app.command("import")(import_)
+    app.command("decide")(decide)
     app.command("settle")(settle)

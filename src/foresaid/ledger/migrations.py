@@ -215,6 +215,7 @@ CREATE TABLE settlement (
   codebook TEXT NOT NULL REFERENCES codebook,
   vintage INTEGER NOT NULL,
   last_call INTEGER NOT NULL,
+  last_decision INTEGER NOT NULL,
   program TEXT NOT NULL,
   settled_at TEXT NOT NULL
 ) STRICT;

@@ -66,6 +66,7 @@ class Settlement:
     codebook: str
     vintage: int
     last_call: int
+    last_decision: int
     program: str
     settled_at: str
 
@@ -108,6 +109,34 @@ def vintage(ledger: Ledger) -> int:
 def last_call(ledger: Ledger) -> int:
     """Return the id of the newest call, 0 when there is none."""
     return int(ledger.scalar("SELECT max(id) FROM call") or 0)
+
+
+@dataclass(frozen=True, slots=True)
+class Decision:
+    """What a person decided about the plain fact on which a call depends."""
+
+    met: bool
+    decided_at: str
+    who: str
+    evidence: str
+
+
+def decisions(ledger: Ledger, *, as_of: date) -> dict[int, Decision]:
+    """Return the latest decision about each call's condition, by call id.
+
+    What happened after ``as_of`` is not known yet.
+    """
+    rows = ledger.db.execute(
+        "SELECT call, met, decided_at, who, evidence FROM decision "
+        "WHERE substr(decided_at, 1, 10) <= ? ORDER BY id",
+        (as_of.isoformat(),),
+    )
+    return {row[0]: Decision(bool(row[1]), *row[2:]) for row in rows}
+
+
+def last_decision(ledger: Ledger) -> int:
+    """Return the id of the newest decision, 0 when there is none."""
+    return int(ledger.scalar("SELECT max(id) FROM decision") or 0)
 
 
 def series_kinds(ledger: Ledger, *, vintage: int) -> dict[str, str]:
@@ -178,8 +207,8 @@ def statement_owners(ledger: Ledger) -> dict[str, str]:
 def latest_settlement(ledger: Ledger) -> Settlement | None:
     """Return the newest settlement run, None when nothing was settled yet."""
     row = ledger.db.execute(
-        "SELECT id, as_of, codebook, vintage, last_call, program, settled_at FROM settlement "
-        "ORDER BY id DESC LIMIT 1"
+        "SELECT id, as_of, codebook, vintage, last_call, last_decision, program, settled_at "
+        "FROM settlement ORDER BY id DESC LIMIT 1"
     ).fetchone()
     return None if row is None else Settlement(row[0], date.fromisoformat(row[1]), *row[2:])
 

@@ -48,7 +48,7 @@ class Ledger:
         if not path.parent.is_dir():
             raise UsageError(f"There is no folder {path.parent} to put the ledger in.")
         ledger = cls(path, _connect(path, mode="rwc"))
-        with _told(path):
+        with ledger._closed_on_fault(), _told(path):
             ledger.db.execute("PRAGMA journal_mode = WAL")
             ledger.db.execute(f"PRAGMA application_id = {APPLICATION_ID}")
             ledger._migrate()
@@ -68,17 +68,8 @@ class Ledger:
                 f"There is no ledger at {path}. Make one with: foresaid new {path}"
             )
         ledger = cls(path, _connect(path, mode="rw"))
-        with _told(path):
-            mark = ledger.scalar("PRAGMA application_id")
-            version = ledger.scalar("PRAGMA user_version")
-        if mark != APPLICATION_ID:
-            raise LedgerError(f"{path} is not a foresaid ledger.")
-        if version > len(MIGRATIONS):
-            raise LedgerError(
-                f"{path} was made by a newer foresaid (schema {version}, this one knows "
-                f"{len(MIGRATIONS)}). Use the newer program."
-            )
-        with _told(path):
+        with ledger._closed_on_fault(), _told(path):
+            ledger._check_kind()
             ledger._migrate()
         return ledger
 
@@ -87,6 +78,24 @@ class Ledger:
 
     def __exit__(self, *_: object) -> None:
         self.db.close()
+
+    @contextmanager
+    def _closed_on_fault(self) -> Iterator[None]:
+        try:
+            yield
+        except BaseException:
+            self.db.close()
+            raise
+
+    def _check_kind(self) -> None:
+        if self.scalar("PRAGMA application_id") != APPLICATION_ID:
+            raise LedgerError(f"{self.path} is not a foresaid ledger.")
+        version = self.scalar("PRAGMA user_version")
+        if version > len(MIGRATIONS):
+            raise LedgerError(
+                f"{self.path} was made by a newer foresaid (schema {version}, this one knows "
+                f"{len(MIGRATIONS)}). Use the newer program."
+            )
 
     def _migrate(self) -> None:
         for number in range(self.scalar("PRAGMA user_version"), len(MIGRATIONS)):
@@ -170,6 +179,10 @@ def _told(path: Path) -> Iterator[None]:
                 f"{BUSY_SECONDS:g} seconds. Nothing was changed; try again."
             ) from fault
         raise LedgerError(f"{path} cannot be used: {fault}. Nothing was changed.") from fault
+    except sqlite3.IntegrityError as fault:
+        raise LedgerError(
+            f"{path} refuses what was to be added: {fault}. Nothing was changed."
+        ) from fault
     except sqlite3.DatabaseError as fault:
         raise LedgerError(f"{path} is not a usable ledger: {fault}") from fault
 

@@ -140,6 +140,15 @@ def add_calls(
         )
 
 
+def add_decision(ledger: Ledger, row: Mapping[str, Any], *, at: str) -> None:
+    """Add what a person decided about a condition.
+
+    ``row`` has the columns of the table: call, met, decided_at, who, evidence.
+    """
+    ledger.record("decide", dict(row), at=at)
+    ledger.insert("decision", dict(row))
+
+
 def add_settlement(
     ledger: Ledger, header: Mapping[str, Any], outcomes: Sequence[tuple[Any, ...]]
 ) -> int:
@@ -150,7 +159,7 @@ def add_settlement(
         ledger.db.conn.executemany(
             f"INSERT INTO outcome VALUES ({slots})", ((settlement, *row) for row in outcomes)
         )
-    ledger.record(
+    ledger.record(  # what a run was made from, not what came out
         "settle",
         {key: header[key] for key in ("as_of", "codebook", "vintage", "last_call")},
         at=header["settled_at"],

@@ -33,6 +33,7 @@ FLAGS = (
     "no highs and lows",
     "price return only",
     "instrument ended",
+    "currency converted",
 )
 
 
@@ -201,6 +202,7 @@ def _flags(found: Judgement) -> Column:
         "no highs and lows": _lacks_range(found),
         "price return only": _lacks_total(found),
         "instrument ended": _has_ended(found),
+        "currency converted": _is_converted(found),
     }
     texts = np.full(len(outcomes.result), "", dtype=object)
     for name in FLAGS:
@@ -213,6 +215,14 @@ def _disagrees(outcomes: Outcomes) -> BoolArray:
     result = np.zeros(len(hit), dtype=bool)
     for values in outcomes.alternates.values():
         result |= (values != NONE) & ((values == HIT) != hit)
+    return result
+
+
+def _is_converted(found: Judgement) -> BoolArray:
+    """Return where prices were converted to the currency of the call."""
+    symbols = np.array([one.symbol for one in found.world.instruments], dtype=object)
+    judged = symbols[found.calls.times.instrument]
+    result: BoolArray = judged != found.calls.frame["instrument"].to_numpy(dtype=object)
     return result
 
 

@@ -89,6 +89,8 @@ def stale_parts(ledger: Ledger, settlement: queries.Settlement) -> tuple[str, ..
         parts.append("new calls")
     if queries.vintage(ledger) != settlement.vintage:
         parts.append("new prices or actions")
+    if queries.last_decision(ledger) != settlement.last_decision:
+        parts.append("new decisions about conditions")
     return tuple(parts)
 
 

@@ -13,8 +13,9 @@ from foresaid import __version__
 from foresaid.chance.base_rate import Starts
 from foresaid.chance.per_call import chances
 from foresaid.ledger import queries, writes
+from foresaid.pipeline.conditions import with_conditions
 from foresaid.pipeline.outcome_rows import Judgement, outcome_rows, screened_out_rows
-from foresaid.pipeline.world import coded_calls, load_world
+from foresaid.pipeline.world import coded_calls, load_world, wanted_currencies
 from foresaid.settle.outcomes import group_calls, settle_calls
 
 if TYPE_CHECKING:
@@ -43,8 +44,10 @@ def judge(
     ledger: Ledger, frame: pd.DataFrame, codebook: Codebook, *, as_of: date, vintage: int
 ) -> Judgement:
     """Return the outcomes and chances of calls, without touching the ledger."""
-    world = load_world(ledger, codebook, as_of=as_of, vintage=vintage)
+    currencies = wanted_currencies(ledger, frame)
+    world = load_world(ledger, codebook, as_of=as_of, vintage=vintage, currencies=currencies)
     calls = coded_calls(frame, world)
+    calls = with_conditions(calls, world, codebook, queries.decisions(ledger, as_of=as_of))
     outcomes = settle_calls(
         calls.times, calls.claims, world.market, calls.inverse, codebook.settlement
     )
@@ -73,6 +76,7 @@ def settle_ledger(ledger: Ledger, codebook: Codebook, *, as_of: date, at: str) -
         "codebook": codebook.digest,
         "vintage": vintage,
         "last_call": last_call,
+        "last_decision": queries.last_decision(ledger),
         "program": __version__,
     }
     latest = queries.latest_settlement(ledger)

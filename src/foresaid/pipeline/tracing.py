@@ -118,7 +118,9 @@ class _Teller:
             ("source", " ".join(t for t in (row["outlet"], row["link"]) if t) or "none given"),
             ("claim", f"{row['instrument']} {row['claim']} (typed: {row['claim_typed']})"),
             ("rule", f"{self.kind.reads}"),
+            ("condition", self._condition()),
             ("publication", self._publication()),
+            ("currency", self._currency()),
             ("reference", self._reference()),
             ("horizon", self._horizon()),
             ("window", self._window()),
@@ -154,6 +156,22 @@ class _Teller:
             if source:
                 found.append({"use": uses} | source)
         return found
+
+    def _condition(self) -> str:
+        if not self.row["given"]:
+            return ""
+        start = _day(int(self.judged.calls.times.said_day[0]))
+        if self.row["reference_session"] is None:
+            return f"{self.row['given']}: {self.row['reason']}"
+        return f"{self.row['given']}: came true; the clock of the call starts on {start}"
+
+    def _currency(self) -> str:
+        if self.instrument.symbol == self.row["instrument"]:
+            return ""
+        return (
+            f"judged on {self.instrument.symbol}: each price at the pair's last close by that "
+            "day, the same rate for high, low and close"
+        )
 
     def _publication(self) -> str:
         times = self.judged.calls.times

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
@@ -13,11 +13,18 @@ from foresaid.claims.phrases import parse_claim
 from foresaid.claims.registry import KINDS
 from foresaid.ledger import queries
 from foresaid.market.clock import local_times
+from foresaid.market.currency import (
+    convert_actions,
+    convert_history,
+    converted_name,
+    find_conversion,
+)
 from foresaid.market.histories import Market, PriceHistory, build_market
 from foresaid.settle.outcomes import CallClaims
 from foresaid.settle.windows import CallTimes
 
 if TYPE_CHECKING:
+    from collections.abc import Collection
     from datetime import date
 
     import pandas as pd
@@ -29,8 +36,7 @@ if TYPE_CHECKING:
     from foresaid.model.records import Action, Instrument
 
 MAX_QUANTITIES = max(len(kind.number_slots) for kind in KINDS.values())
-CONDITION_OPEN = "its condition is not judged yet"
-OTHER_CURRENCY = "stated in a currency other than the instrument's"
+OTHER_CURRENCY = "no pair converts the instrument's prices to the stated currency"
 OTHER_CURRENCIES = "compared with an instrument in another currency"
 
 
@@ -54,35 +60,71 @@ class CodedCalls:
     inverse: BoolArray
 
 
-def load_world(ledger: Ledger, codebook: Codebook, *, as_of: date, vintage: int) -> World:
-    """Return the market as it was known at the end of a day, in one vintage."""
-    known = queries.instruments(ledger)
+def load_world(
+    ledger: Ledger,
+    codebook: Codebook,
+    *,
+    as_of: date,
+    vintage: int,
+    currencies: Collection[tuple[str, str]] = (),
+) -> World:
+    """Return the market as it was known at the end of a day, in one vintage.
+
+    ``currencies`` holds pairs of symbol and currency in which prices are wanted besides the
+    instrument's own; those for which the ledger has no pair of currencies are left out.
+    """
+    instruments = [one for _, one in queries.instruments(ledger).values()]
+    histories = _histories(ledger, vintage)
+    actions = queries.actions(ledger, vintage=vintage)
+    series = queries.series_kinds(ledger, vintage=vintage)
+    known = {one.symbol: one for one in instruments}
+    for symbol, currency in sorted(currencies):
+        own = known[symbol]
+        conversion = find_conversion(known.values(), own=own.currency, wanted=currency)
+        if conversion is None or conversion.pair.symbol not in histories:
+            continue
+        pair, name = histories[conversion.pair.symbol], converted_name(symbol, currency)
+        paid = [one for one in actions if one.instrument == symbol]
+        instruments.append(replace(own, symbol=name, currency=currency))
+        if symbol in histories:
+            histories[name] = convert_history(histories[symbol], pair, conversion)
+        actions += convert_actions(paid, pair, conversion, name=name)
+        series[name] = series.get(symbol, "raw")
+    market = build_market(instruments, histories, actions, series, codebook, as_of=as_of)
+    number = {one.symbol: i for i, one in enumerate(instruments)}
+    return World(market, tuple(instruments), number, tuple(actions))
+
+
+def _histories(ledger: Ledger, vintage: int) -> dict[str, PriceHistory]:
+    """Return the price history of every instrument that has one, by symbol."""
     rows = queries.prices(ledger, vintage=vintage)
+    symbols = {key: symbol for symbol, (key, _) in queries.instruments(ledger).items()}
     bounds = np.flatnonzero(np.diff(rows.instrument, prepend=-1, append=-1))
     histories = {}
-    symbols = {key: symbol for symbol, (key, _) in known.items()}
     for begin, end in pairwise(bounds):
         own = slice(int(begin), int(end))
         histories[symbols[int(rows.instrument[begin])]] = PriceHistory(
             rows.day[own], rows.high[own], rows.low[own], rows.close[own], rows.total[own]
         )
-    instruments = tuple(one for _, one in known.values())
-    actions = queries.actions(ledger, vintage=vintage)
-    market = build_market(
-        instruments,
-        histories,
-        actions,
-        queries.series_kinds(ledger, vintage=vintage),
-        codebook,
-        as_of=as_of,
-    )
-    number = {one.symbol: i for i, one in enumerate(instruments)}
-    return World(market, instruments, number, tuple(actions))
+    return histories
+
+
+def wanted_currencies(ledger: Ledger, frame: pd.DataFrame) -> set[tuple[str, str]]:
+    """Return the instruments that calls speak of in a currency other than their own."""
+    own = {symbol: one.currency for symbol, (_, one) in queries.instruments(ledger).items()}
+    stated = zip(frame["instrument"], frame["currency"], strict=True)
+    return {(s, c) for s, c in set(stated) if c and own[s] and own[s] != c}
 
 
 def coded_calls(frame: pd.DataFrame, world: World) -> CodedCalls:
     """Return the calls of a frame of ``queries.calls`` (no ``not a call`` rows) as arrays."""
-    number = np.array([world.number[symbol] for symbol in frame["instrument"]], dtype=np.int64)
+    number = np.array(
+        [
+            world.number.get(converted_name(symbol, currency), world.number[symbol])
+            for symbol, currency in zip(frame["instrument"], frame["currency"], strict=True)
+        ],
+        dtype=np.int64,
+    )
     zones = [world.instruments[i].zone for i in number]
     day, minute = local_times(frame["said_at"].tolist(), zones)
     deadline = np.array(
@@ -108,9 +150,8 @@ def _claims(
             values[row, column] = quantity.value
             units[row, column] = UNIT_CODES[quantity.unit]
     kinds = np.array([claim.kind for claim in parsed], dtype=object)
-    priced = np.array([_names_a_price(claim.kind) for claim in parsed], dtype=bool)
     legs = _legs(parsed, world)
-    blocked = _blocked(frame, instruments, priced[codes] if len(codes) else priced)
+    blocked = _blocked(frame, instruments)
     if legs is not None:
         legs = legs[codes]
         blocked[(blocked == "") & _differ_in_currency(instruments, legs, world)] = (
@@ -142,17 +183,12 @@ def _differ_in_currency(
     return result
 
 
-def _names_a_price(kind: str) -> bool:
-    return any(mark.role == "level" for mark in KINDS[kind].marks)
-
-
 def _blocked(
-    frame: pd.DataFrame, instruments: list[Instrument], priced: BoolArray
+    frame: pd.DataFrame, instruments: list[Instrument]
 ) -> np.ndarray[Any, np.dtype[np.object_]]:
     blocked = np.full(len(frame), "", dtype=object)
     own = np.array([one.currency for one in instruments], dtype=object)
     stated = frame["currency"].to_numpy(dtype=object)
     differs = (stated != "") & (own != "") & (stated != own)
-    blocked[differs & priced] = OTHER_CURRENCY
-    blocked[frame["given"].to_numpy(dtype=object) != ""] = CONDITION_OPEN
+    blocked[differs] = OTHER_CURRENCY
     return blocked

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import csv
-import io
 import json
 from typing import TYPE_CHECKING, Any
 
@@ -24,12 +23,22 @@ def as_csv(columns: Sequence[str], rows: Iterable[dict[str, Any]]) -> str:
     >>> as_csv(["ref", "chance"], [{"ref": "=A1", "chance": 0.1}]).splitlines()
     ['ref,chance', "'=A1,0.1"]
     """
-    out = io.StringIO()
-    writer = csv.writer(out, lineterminator="\n")
+    lines = _Lines()
+    writer = csv.writer(lines)
     writer.writerow(columns)
     for row in rows:
         writer.writerow([_cell(row.get(name)) for name in columns])
-    return out.getvalue()
+    return "".join(lines.texts)
+
+
+class _Lines:
+    """Takes rows that end in CR LF, so that either is quoted in a cell, and ends them in LF."""
+
+    def __init__(self) -> None:
+        self.texts: list[str] = []
+
+    def write(self, text: str) -> None:
+        self.texts.append(text.removesuffix("\r\n") + "\n")
 
 
 def _cell(value: Any) -> Any:  # noqa: ANN401 - any cell

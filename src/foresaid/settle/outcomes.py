@@ -37,13 +37,16 @@ class CallClaims:
     values, units : ndarray, shape (n, n_quantities)
         The numbers of the phrases and their unit codes (``claims.binding``).
     blocked : ndarray of str, shape (n,)
-        Why a call cannot be settled yet whatever the prices say; empty for most.
+        Why a call cannot be settled whatever the prices say; empty for most.
+    is_void : ndarray of bool, shape (n,), or None
+        Whether such a call is void for good instead of open; None for none.
     """
 
     kind: np.ndarray[Any, np.dtype[np.object_]]
     values: FloatArray
     units: IntArray
     blocked: np.ndarray[Any, np.dtype[np.object_]]
+    is_void: BoolArray | None = None
 
 
 @dataclass(frozen=True)
@@ -145,6 +148,8 @@ def settle_calls(
     resolved = resolve_windows(times, market, rules)
     work = _Work(claims, market, resolved, rules, level_factors(times, market))
     work.leave(claims.blocked != "", "open", claims.blocked)
+    if claims.is_void is not None:
+        work.leave(claims.is_void, "void", claims.blocked)
     total_return = market.venue.total_return[times.instrument]
     order = np.argsort(resolved.windows.reference, kind="stable")
     for group in group_calls(claims.kind, inverse, order):

@@ -1,3 +1,5 @@
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -104,12 +106,10 @@ def test_watching_closes_alone_is_less_likely_than_watching_all(name):
     mark = np.exp(0.03 * (bound.side or 1))
     assert bound.on is On.CLOSE
     closes = model((bound,), [mark])[0]
-    ends = model(BoundKernel((bound,)).bounds, [mark], n=SESSIONS)[0]
-    assert closes == ends
-    from dataclasses import replace
-
-    seen = model((replace(bound, on=On.RANGE),), [mark])[0]
-    assert closes < seen
+    at_any_time = (replace(bound, on=On.RANGE),)
+    assert closes < model(at_any_time, [mark])[0]
+    # without highs and lows a path is watched at its closes, too
+    assert model(at_any_time, [mark], has_range=False)[0] == closes
 
 
 @pytest.mark.parametrize("deviation", [0.0, np.nan, -0.01])
@@ -145,7 +145,6 @@ def test_differences_use_the_mark_as_it_is():
 
 def test_a_band_that_leaves_out_the_reference_cannot_be_kept():
     bounds = KINDS["stays between and"].kernel.bounds
-    assert model(bounds, [[1.01, 1.05], [0.95, 0.99], [0.9, 1.1]]).round(3).tolist()[:2] == [
-        0,
-        0,
-    ]
+    found = model(bounds, [[1.01, 1.05], [0.95, 0.99], [0.9, 1.1]])
+    assert found[:2].tolist() == [0.0, 0.0]
+    assert found[2] > 0.9

@@ -113,6 +113,24 @@ def test_a_ledger_of_a_newer_program(path):
         Ledger.open(path)
 
 
+@pytest.mark.parametrize("content", [b"no database at all\n" * 300, b""])
+def test_a_refused_file_is_let_go_of(path, content, monkeypatch):
+    made = []
+    connect = store._connect
+
+    def kept(*args, **options):
+        made.append(connect(*args, **options))
+        return made[-1]
+
+    monkeypatch.setattr(store, "_connect", kept)
+    path.write_bytes(content)
+    with pytest.raises(LedgerError):
+        Ledger.open(path)
+    for connection in made:
+        with pytest.raises(sqlite3.ProgrammingError, match="closed"):
+            connection.execute("SELECT 1")
+
+
 def test_an_older_schema_is_brought_up_to_date(path, monkeypatch):
     with Ledger.create(path):
         pass
@@ -189,9 +207,14 @@ def test_rows_refer_to_rows_that_are_there(ledger):
 
 def test_a_block_is_kept_as_a_whole_or_not_at_all(ledger, path):
     row = {"what": "calls", "file": "c.csv", "sha256": "0" * 64, "n_rows": 1, "loaded_at": AT}
-    with pytest.raises(RuntimeError, match="stop"), ledger.writing():
-        ledger.insert("load", row)
-        raise RuntimeError("stop")
+
+    def half_way():
+        with ledger.writing():
+            ledger.insert("load", row)
+            raise RuntimeError("stop")
+
+    with pytest.raises(RuntimeError, match="stop"):
+        half_way()
     assert ledger.scalar("SELECT count(*) FROM load") == 0
     with ledger.writing():
         assert ledger.insert("load", row) == 1

@@ -14,7 +14,9 @@ cells = st.one_of(
     st.integers(),
     st.floats(allow_nan=False, allow_infinity=False),
     st.text(st.characters(exclude_categories=["Cs"], exclude_characters="\0"), max_size=12),
-    st.sampled_from(['"', "a,b", "line\nbreak", "=1+1", "@x", "-5", "'x", "\ttab"]),
+    st.sampled_from(
+        ['"', "a,b", "line\nbreak", "\r", "a\rb", "\r\n", "=1+1", "@x", "-5", "'x", "\ttab"]
+    ),
 )
 
 
