@@ -87,7 +87,8 @@ def import_(
     """
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import load_codebook
-    from foresaid.pipeline.importing import ImportRequest, import_file
+    from foresaid.pipeline.batches import ImportRequest
+    from foresaid.pipeline.importing import import_file
 
     book = load_codebook(codebook)
     with Ledger.open(ledger) as opened:

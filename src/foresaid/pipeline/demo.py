@@ -10,7 +10,8 @@ from typing import TYPE_CHECKING
 from foresaid.ledger.store import Ledger
 from foresaid.model.codebook import default_codebook
 from foresaid.model.errors import UsageError
-from foresaid.pipeline.importing import ImportRequest, What, import_file
+from foresaid.pipeline.batches import ImportRequest, What
+from foresaid.pipeline.importing import import_file
 from foresaid.pipeline.settling import Settled, settle_ledger
 
 if TYPE_CHECKING:

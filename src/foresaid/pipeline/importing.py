@@ -3,51 +3,22 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING, Any, Literal
+from typing import TYPE_CHECKING, Any
 
-import numpy as np
-
-from foresaid.ingest import calls as calls_file
-from foresaid.ingest.actions import parse_actions
-from foresaid.ingest.prices import parse_prices
 from foresaid.ingest.readers import read_table
 from foresaid.ingest.rejects import rejected_lines, write_rejects
-from foresaid.ingest.things import parse_forecasters, parse_instruments
-from foresaid.ledger import queries, writes
+from foresaid.ledger import writes
 from foresaid.model.errors import CheckFailed, InputRejected
-from foresaid.model.issues import Issue, clip
+from foresaid.pipeline.batches import BATCHES, Batch, ImportRequest, Job
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Sequence
-    from datetime import date
+    from collections.abc import Callable
     from pathlib import Path
 
-    from foresaid.ingest.prices import PriceRows as PriceFile
     from foresaid.ingest.tables import RawTable
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
-    from foresaid.model.records import SeriesKind
-
-What = Literal["instruments", "prices", "actions", "forecasters", "calls"]
-
-
-@dataclass(frozen=True)
-class ImportRequest:
-    """What to import and how.
-
-    ``today`` and ``at`` are the clock's; ``keep_good`` takes the good rows of a faulty file
-    and writes the rest to a reject file.
-    """
-
-    what: What
-    path: Path
-    today: date
-    at: str
-    dates: Literal["iso", "dmy", "mdy"] = "iso"
-    series: SeriesKind = "raw"
-    instrument: str | None = None
-    dry_run: bool = False
-    keep_good: bool = False
+    from foresaid.model.issues import Issue
 
 
 @dataclass(frozen=True)
@@ -74,28 +45,6 @@ class Imported:
     issues: tuple[Issue, ...]
     remarks: tuple[str, ...]
     reject_file: Path | None = None
-
-
-@dataclass(frozen=True)
-class _Batch:
-    """Rows of a file that the ledger lacks, and how to add them."""
-
-    added: int
-    known: int
-    issues: tuple[Issue, ...]
-    remarks: tuple[str, ...]
-    write: Callable[[int], None]
-    bad_lines: Sequence[int] = ()
-
-
-@dataclass(frozen=True)
-class _Job:
-    """One file against one ledger."""
-
-    ledger: Ledger
-    table: RawTable
-    request: ImportRequest
-    codebook: Codebook
 
 
 def import_file(
@@ -126,7 +75,7 @@ def import_file(
         The same on a dry run.
     """
     table = read_table(request.path, progress=progress)
-    batch = _BATCHES[request.what](_Job(ledger, table, request, codebook))
+    batch = BATCHES[request.what](Job(ledger, table, request, codebook))
     issues = (*table.issues, *batch.issues)
     rejected = rejected_lines(table, batch.issues, batch.bad_lines)
     has_errors = any(issue.severity == "error" for issue in issues)
@@ -148,7 +97,7 @@ def import_file(
     return result
 
 
-def _load_row(request: ImportRequest, table: RawTable, batch: _Batch) -> dict[str, Any]:
+def _load_row(request: ImportRequest, table: RawTable, batch: Batch) -> dict[str, Any]:
     return {
         "what": request.what,
         "file": request.path.name,
@@ -157,205 +106,3 @@ def _load_row(request: ImportRequest, table: RawTable, batch: _Batch) -> dict[st
         "n_rows": batch.added,
         "loaded_at": request.at,
     }
-
-
-def _fresh(
-    rows: Sequence[Any], lines: Sequence[int], known: dict[str, Any], key: str, file: str
-) -> tuple[list[Any], list[Issue]]:
-    """Return the rows the ledger lacks; a row that differs from the known one is a fault."""
-    fresh, issues = [], []
-    for row, line in zip(rows, lines, strict=True):
-        name = getattr(row, key)
-        if name not in known:
-            fresh.append(row)
-        elif known[name] != row:
-            message = f"`{clip(name)}` is in the ledger with other details"
-            hint = "The ledger only grows: give it another name, or leave the row out."
-            issues.append(Issue("known-otherwise", message, file, line, key, clip(name), hint))
-    return fresh, issues
-
-
-def _instruments(job: _Job) -> _Batch:
-    parsed = parse_instruments(
-        job.table,
-        kinds=job.codebook.instrument_kinds,
-        known=queries.instruments(job.ledger),
-    )
-    known = {symbol: one for symbol, (_, one) in queries.instruments(job.ledger).items()}
-    fresh, issues = _fresh(parsed.rows, parsed.lines, known, "symbol", job.table.file)
-    return _Batch(
-        len(fresh),
-        len(parsed.rows) - len(fresh) - len(issues),
-        (*parsed.issues, *issues),
-        parsed.remarks,
-        lambda load: writes.add_instruments(job.ledger, fresh, load),
-    )
-
-
-def _forecasters(job: _Job) -> _Batch:
-    parsed = parse_forecasters(job.table)
-    held = queries.forecasters(job.ledger)
-    known = {handle: one for handle, (_, one) in held.items()}
-    fresh, issues = _fresh(parsed.rows, parsed.lines, known, "handle", job.table.file)
-    return _Batch(
-        len(fresh),
-        len(parsed.rows) - len(fresh) - len(issues),
-        (*parsed.issues, *issues),
-        parsed.remarks,
-        lambda load: writes.add_forecasters(job.ledger, fresh, load),
-    )
-
-
-def _actions(job: _Job) -> _Batch:
-    instruments = queries.instruments(job.ledger)
-    parsed = parse_actions(
-        job.table, known={name: one for name, (_, one) in instruments.items()}
-    )
-    held = queries.actions(job.ledger, vintage=queries.vintage(job.ledger))
-    known = {(one.instrument, one.effective, one.kind): one for one in held}
-    fresh, issues = [], []
-    for row, line in zip(parsed.rows, parsed.lines, strict=True):
-        same = known.get((row.instrument, row.effective, row.kind))
-        if same is None:
-            fresh.append(row)
-        elif same != row:
-            message = f"the ledger holds another {row.kind} of {row.instrument} on that day"
-            hint = "Leave the row out, or mend it."
-            issues.append(
-                Issue(
-                    "known-otherwise", message, job.table.file, line, "action", row.kind, hint
-                )
-            )
-    ids = {symbol: key for symbol, (key, _) in instruments.items()}
-    return _Batch(
-        len(fresh),
-        len(parsed.rows) - len(fresh) - len(issues),
-        (*parsed.issues, *issues),
-        parsed.remarks,
-        lambda load: writes.add_actions(job.ledger, fresh, load, ids),
-    )
-
-
-def _prices(job: _Job) -> _Batch:
-    instruments = queries.instruments(job.ledger)
-    parsed = parse_prices(
-        job.table,
-        instrument=job.request.instrument,
-        known={symbol: one for symbol, (_, one) in instruments.items()},
-        allows_negative=lambda kind: job.codebook.instrument_kinds[kind].negative,
-        today=job.request.today,
-        dates=job.request.dates,
-    )
-    ids = {symbol: key for symbol, (key, _) in instruments.items()}
-    numbers = np.array([ids[str(symbol)] for symbol in parsed.symbols], dtype=np.int64)
-    numbers = numbers[parsed.instrument] if len(numbers) else numbers
-    mixed = _mixed_series(job, parsed)
-    fresh = _unlike_known(job.ledger, numbers, parsed)
-    return _Batch(
-        int(fresh.sum()),
-        int((~fresh).sum()),
-        (*parsed.issues, *mixed),
-        parsed.remarks,
-        lambda load: writes.add_prices(job.ledger, _price_rows(numbers, parsed, fresh, load)),
-        parsed.bad_lines.tolist(),
-    )
-
-
-def _mixed_series(job: _Job, parsed: PriceFile) -> list[Issue]:
-    """Return a fault for each instrument whose prices are of another series kind so far."""
-    held = queries.series_kinds(job.ledger, vintage=queries.vintage(job.ledger))
-    series = job.request.series
-    return [
-        Issue(
-            "mixed-series",
-            f"the ledger holds {held[symbol]} prices of {symbol}, the file is {series}",
-            job.table.file,
-            hint=f"Import it with --series {held[symbol]}, or keep it in another ledger.",
-        )
-        for symbol in parsed.symbols
-        if held.get(symbol, series) != series
-    ]
-
-
-def _unlike_known(ledger: Ledger, numbers: Any, parsed: PriceFile) -> Any:  # noqa: ANN401
-    """Return which rows the ledger lacks or holds with other prices; boolean, shape (n,)."""
-    held = queries.prices(ledger, vintage=queries.vintage(ledger))
-    day = parsed.session.astype("datetime64[D]").astype(np.int64)
-    base = int(min([*day[:1], *held.day[:1], 0]))
-    width = int(max([day.max(initial=0), held.day.max(initial=0)])) - base + 100_000
-    held_keys = held.instrument * width + held.day
-    keys = numbers * width + day
-    at = np.searchsorted(held_keys, keys)
-    inside = np.minimum(at, max(len(held_keys) - 1, 0))
-    same = np.zeros(len(keys), dtype=bool)
-    if len(held_keys):
-        same = held_keys[inside] == keys
-        for name in ("open", "high", "low", "close", "volume", "total"):
-            new, old = getattr(parsed, name), getattr(held, name)[inside]
-            same &= (new == old) | (np.isnan(new) & np.isnan(old))
-    return ~same
-
-
-def _price_rows(numbers: Any, parsed: PriceFile, rows: Any, load: int) -> Any:  # noqa: ANN401
-    """Yield the rows to add, plain Python values with None for what the file lacks."""
-    columns = [numbers[rows].tolist(), parsed.session[rows].astype("datetime64[D]").astype(str)]
-    columns[1] = columns[1].tolist()
-    columns.append([load] * len(columns[0]))
-    for name in ("open", "high", "low", "close", "volume", "total"):
-        values = getattr(parsed, name)[rows].tolist()
-        columns.append([None if value != value else value for value in values])  # noqa: PLR0124
-    return zip(*columns, strict=True)
-
-
-def _calls(job: _Job) -> _Batch:
-    instruments, forecasters = queries.instruments(job.ledger), queries.forecasters(job.ledger)
-    handles = {handle: handle for handle in forecasters}
-    for handle, (_, one) in forecasters.items():
-        handles |= {alias: handle for alias in one.aliases if alias not in forecasters}
-    context = calls_file.CallContext(
-        instruments={symbol: one for symbol, (_, one) in instruments.items()},
-        handles=handles,
-        owners=queries.statement_owners(job.ledger),
-        codebook=job.codebook,
-        today=job.request.today,
-        order=job.request.dates,
-    )
-    parsed = calls_file.parse_calls(job.table, context)
-    digests = queries.statement_digests(job.ledger)
-    fresh, issues = [], []
-    for row, line in zip(parsed.rows, parsed.lines, strict=True):
-        if row.ref not in digests:
-            fresh.append(row)
-        elif digests[row.ref] != row.digest:
-            message = f"the ledger holds another row under the ref `{clip(row.ref)}`"
-            hint = (
-                "Calls are never changed: give the row a new ref, with `revises` for the old."
-            )
-            issues.append(
-                Issue(
-                    "known-otherwise", message, job.table.file, line, "ref", clip(row.ref), hint
-                )
-            )
-    return _Batch(
-        len(fresh),
-        len(parsed.rows) - len(fresh) - len(issues),
-        (*parsed.issues, *issues),
-        parsed.remarks,
-        lambda load: writes.add_calls(
-            job.ledger,
-            fresh,
-            load,
-            forecasters={handle: key for handle, (key, _) in forecasters.items()},
-            instruments={symbol: key for symbol, (key, _) in instruments.items()},
-            codebook=job.codebook.digest,
-        ),
-    )
-
-
-_BATCHES: dict[str, Callable[[_Job], _Batch]] = {
-    "instruments": _instruments,
-    "prices": _prices,
-    "actions": _actions,
-    "forecasters": _forecasters,
-    "calls": _calls,
-}

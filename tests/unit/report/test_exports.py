@@ -39,7 +39,7 @@ def test_csv_reads_back(rows):
                 is_formula = cell.startswith(FORMULA_STARTS)
                 assert shown == ("'" + cell if is_formula else cell)
             else:
-                assert float(shown) == cell
+                assert type(cell)(shown) == cell
 
 
 @pytest.mark.parametrize("start", FORMULA_STARTS)
