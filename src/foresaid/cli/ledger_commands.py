@@ -132,11 +132,21 @@ def settle(
         str | None, typer.Option("--as-of", help="The day of settlement; today if not given.")
     ] = None,
     codebook: CodebookPath = None,
+    vintage: Annotated[
+        int | None,
+        typer.Option(help="Count prices and actions only up to this load (its number)."),
+    ] = None,
+    changes: Annotated[
+        bool,
+        typer.Option("--changes", help="List the calls whose result is not what it was."),
+    ] = False,
     format_: OutputFormat = Format.table,
 ) -> None:
     """Settle every call as of a day, and work out the chance of each.
 
-    Example: foresaid settle --ledger desk.foresaid --as-of 2025-06-30
+    Results are never overwritten: each run is kept beside the ones before it.
+
+    Example: foresaid settle --ledger desk.foresaid --as-of 2025-06-30 --changes
     """
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import load_codebook
@@ -145,8 +155,13 @@ def settle(
     book = load_codebook(codebook)
     day = read_day(as_of)
     with Ledger.open(ledger) as opened:
-        done = settle_ledger(opened, book, as_of=day, at=now())
-    _show_settled(done, format_)
+        done = settle_ledger(opened, book, as_of=day, at=now(), vintage=vintage)
+    if changes:
+        _show_changes(done, format_)
+    else:
+        _show_settled(done, format_)
+        if done.changes:
+            say(f"{len(done.changes)} results differ from the run before; see --changes.")
 
 
 class Answer(StrEnum):
@@ -203,6 +218,18 @@ def _show_settled(done: Settled, form: Format) -> None:
     ]
     screen = console()
     screen.print(make_table(columns, rows, width=screen.width))
+
+
+def _show_changes(done: Settled, form: Format) -> None:
+    from foresaid.cli.console import console, give_out
+    from foresaid.report.tables import change_columns, make_table
+
+    if form is not Format.table:
+        give_out(done.changes, ["ref", "before", "after", "because"], form)
+        return
+    screen = console()
+    screen.print(make_table(change_columns(), done.changes, width=screen.width))
+    say(f"{len(done.changes)} results differ from the run before.")
 
 
 def demo(

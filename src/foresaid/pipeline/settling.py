@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -13,6 +13,7 @@ from foresaid import __version__
 from foresaid.chance.base_rate import Starts
 from foresaid.chance.per_call import chances
 from foresaid.ledger import queries, writes
+from foresaid.model.errors import UsageError
 from foresaid.pipeline.conditions import with_conditions
 from foresaid.pipeline.outcome_rows import Judgement, outcome_rows, screened_out_rows
 from foresaid.pipeline.world import coded_calls, load_world, wanted_currencies
@@ -32,12 +33,25 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True)
 class Settled:
-    """A settlement run: what it counted, and whether it was needed."""
+    """A settlement run: what it counted, and how it differs from the run before.
+
+    Attributes
+    ----------
+    as_of : date
+        The day of settlement.
+    counts, reasons : dict of str to int
+        Calls by result, and open or void ones by reason.
+    is_new : bool
+        Whether anything differed from the inputs of the run before.
+    changes : list of dict
+        Calls whose result differs from the run before: ref, before, after, because.
+    """
 
     as_of: date
     counts: dict[str, int]
     reasons: dict[str, int]
     is_new: bool
+    changes: list[dict[str, str]] = field(default_factory=list)
 
 
 def judge(
@@ -54,7 +68,14 @@ def judge(
     return Judgement(world, calls, outcomes, _chances(world, calls, outcomes, codebook))
 
 
-def settle_ledger(ledger: Ledger, codebook: Codebook, *, as_of: date, at: str) -> Settled:
+def settle_ledger(
+    ledger: Ledger,
+    codebook: Codebook,
+    *,
+    as_of: date,
+    at: str,
+    vintage: int | None = None,
+) -> Settled:
     """Settle every call as of a day and keep the outcomes.
 
     A run from the very same calls, prices, codebook and day adds nothing.
@@ -69,8 +90,16 @@ def settle_ledger(ledger: Ledger, codebook: Codebook, *, as_of: date, at: str) -
         Statements and prices after this day do not count.
     at : str
         Time of the run, RFC 3339, kept with it.
+    vintage : int or None
+        Number of the last load of prices and actions that counts; None for the newest.
+
+    Raises
+    ------
+    UsageError
+        If there is no such load.
     """
-    vintage, last_call = queries.vintage(ledger), queries.last_call(ledger)
+    newest = queries.vintage(ledger)
+    vintage, last_call = _checked_vintage(vintage, newest), queries.last_call(ledger)
     header = {
         "as_of": as_of.isoformat(),
         "codebook": codebook.digest,
@@ -91,10 +120,51 @@ def settle_ledger(ledger: Ledger, codebook: Codebook, *, as_of: date, at: str) -
         [outcome_rows(judgement), screened_out_rows(frame[~is_call])], ignore_index=True
     )
     rows = list(zip(*(table[name].tolist() for name in table.columns), strict=True))
+    changes = []
+    if latest is not None:
+        before = queries.outcomes(ledger, latest.id)
+        changes = _changes(frame, before, table, _differences(latest, header))
     with ledger.writing():
         writes.add_codebook(ledger, codebook, at=at)
         writes.add_settlement(ledger, header | {"settled_at": at}, rows)
-    return _summary(table, as_of, is_new=True)
+    return replace(_summary(table, as_of, is_new=True), changes=changes)
+
+
+def _checked_vintage(wanted: int | None, newest: int) -> int:
+    if wanted is None:
+        return newest
+    if not 0 <= wanted <= newest:
+        raise UsageError(
+            f"There is no price vintage {wanted}; the loads of this ledger go up to {newest}."
+        )
+    return wanted
+
+
+def _differences(latest: queries.Settlement, header: dict[str, Any]) -> str:
+    """Return what two runs were made from differently, in words."""
+    words = {
+        "as_of": "another day",
+        "codebook": "another codebook",
+        "vintage": "other prices or actions",
+        "last_call": "new calls",
+        "last_decision": "a decision about its condition",
+        "program": "another program version",
+    }
+    changed = [name for name in words if str(getattr(latest, name)) != str(header[name])]
+    return " or ".join(words[name] for name in changed if name != "last_call")
+
+
+def _changes(
+    frame: pd.DataFrame, before: pd.DataFrame, after: pd.DataFrame, because: str
+) -> list[dict[str, str]]:
+    """Return the calls of both runs whose result is not the same."""
+    old = dict(zip(before["call"], before["result"], strict=True))
+    refs = dict(zip(frame["call"], frame["ref"], strict=True))
+    return [
+        {"ref": refs[call], "before": old[call], "after": result, "because": because}
+        for call, result in zip(after["call"], after["result"], strict=True)
+        if call in old and old[call] != result
+    ]
 
 
 def _is_same(latest: queries.Settlement, header: dict[str, Any]) -> bool:

@@ -102,11 +102,13 @@ def _imputed(row: dict[str, Any]) -> str:
     return f"{row['imputed_hits']} of {row['imputed_n']}" if row["imputed_n"] else "–"
 
 
-def _keys(keys: Sequence[str]) -> list[Column]:
-    def key_text(key: str) -> Callable[[dict[str, Any]], str]:
-        return lambda row: str(row[key] or "–")
+def _text(name: str) -> Callable[[dict[str, Any]], str]:
+    """Return what shows a cell as text, a dash where it is empty or nought."""
+    return lambda row: str(row[name] or "–")
 
-    return [Column(key, key_text(key), "left") for key in keys]
+
+def _keys(keys: Sequence[str]) -> list[Column]:
+    return [Column(key, _text(key), "left") for key in keys]
 
 
 def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
@@ -128,18 +130,14 @@ def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
 
 def beside_columns(keys: Sequence[str]) -> list[Column]:
     """Return the columns of what stands beside the rates."""
-
-    def count(name: str) -> Callable[[dict[str, Any]], str]:
-        return lambda row: str(row[name] or "–")
-
     return [
         *_keys(keys),
-        Column("not a call", count("not_a_call")),
-        Column("open", count("open")),
-        Column("void", count("void")),
-        Column("early", count("early")),
+        Column("not a call", _text("not_a_call")),
+        Column("open", _text("open")),
+        Column("void", _text("void")),
+        Column("early", _text("early")),
         Column("undated right", _imputed),
-        Column("stated", count("n_probability")),
+        Column("stated", _text("n_probability")),
         Column("Brier", lambda row: decimal(row["brier"])),
         Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),
     ]
@@ -164,6 +162,12 @@ BESIDE_GUIDE = (
 )
 
 
+def change_columns() -> list[Column]:
+    """Return the columns of the list of changed results."""
+    names = ("ref", "before", "after", "because")
+    return [Column(name, _text(name), "left", wraps=name == "because") for name in names]
+
+
 def _outcome(row: dict[str, Any]) -> str:
     said = row["outcome"] or "not settled"
     return f"{said}: {row['reason']}" if row["reason"] else said
@@ -171,17 +175,13 @@ def _outcome(row: dict[str, Any]) -> str:
 
 def call_columns() -> list[Column]:
     """Return the columns of the list of calls."""
-
-    def text(name: str) -> Callable[[dict[str, Any]], str]:
-        return lambda row: str(row[name] or "–")
-
     return [
-        Column("ref", text("ref"), "left"),
-        Column("forecaster", text("forecaster"), "left"),
+        Column("ref", _text("ref"), "left"),
+        Column("forecaster", _text("forecaster"), "left"),
         Column("said", lambda row: row["said_at"][:10], "left"),
-        Column("instrument", text("instrument"), "left"),
-        Column("claim", text("claim"), "left", wraps=True),
-        Column("horizon", text("horizon"), "left", wraps=True),
+        Column("instrument", _text("instrument"), "left"),
+        Column("claim", _text("claim"), "left", wraps=True),
+        Column("horizon", _text("horizon"), "left", wraps=True),
         Column("chance", lambda row: fraction(row["chance"])),
         Column("outcome", _outcome, "left", wraps=True),
     ]
