@@ -15,6 +15,7 @@ from foresaid.chance.per_call import chances
 from foresaid.ledger import queries, writes
 from foresaid.model.errors import UsageError
 from foresaid.pipeline.conditions import with_conditions
+from foresaid.pipeline.other_horizons import with_other_horizons
 from foresaid.pipeline.outcome_rows import Judgement, outcome_rows, screened_out_rows
 from foresaid.pipeline.world import coded_calls, load_world, wanted_currencies
 from foresaid.settle.outcomes import group_calls, settle_calls
@@ -65,6 +66,7 @@ def judge(
     outcomes = settle_calls(
         calls.times, calls.claims, world.market, calls.inverse, codebook.settlement
     )
+    outcomes = with_other_horizons(outcomes, calls, world, codebook)
     return Judgement(world, calls, outcomes, _chances(world, calls, outcomes, codebook))
 
 

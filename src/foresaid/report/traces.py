@@ -13,6 +13,8 @@ ALTERNATE_WORDS = {
     "any_time": "judged on any high or low of the window",
     "closes": "judged on closes instead of highs and lows",
     "price_return": "judged on price returns, dividends left aside",
+    "shorter": "with the codebook's shorter length for the imputed horizon",
+    "longer": "with the codebook's longer length for the imputed horizon",
     "close_before": "measured from the close before publication",
 }
 

@@ -24,6 +24,7 @@ if TYPE_CHECKING:
 CHUNK = 32_768  # windows judged at once: small enough to stay in the processor's cache
 NONE, MISS, HIT = -1, 0, 1
 CLOSE_BEFORE = "close_before"
+SHORTER, LONGER = "shorter", "longer"  # of imputed horizons, filled in by the pipeline
 
 
 @dataclass(frozen=True)
@@ -105,7 +106,7 @@ class Outcomes:
 def alternate_names() -> list[str]:
     """Return the names of all alternates that any kind keeps, in a fixed order."""
     names = {name for kind in KINDS.values() for name in kind.alternates}
-    return [*sorted(names), CLOSE_BEFORE]
+    return [*sorted(names), CLOSE_BEFORE, SHORTER, LONGER]
 
 
 def group_calls(
