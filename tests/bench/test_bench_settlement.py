@@ -145,7 +145,7 @@ def test_ends_against_two_asof_merges(benchmark, setting):
 
 
 def test_touches_against_a_loop_over_calls(benchmark, setting):
-    market, histories, times, move = setting
+    _, histories, times, move = setting
     frames = [
         pd.DataFrame({"high": h.high, "low": h.low, "close": h.close}, index=h.day)
         for h in histories.values()

@@ -8,7 +8,10 @@ from typer.testing import CliRunner
 
 from foresaid.cli.main import app
 
-CALL = "ref,forecaster,said_at,instrument,claim,horizon\nC1,c.oren,2024-01-01,AAA,ends above 102,2 days\n"
+CALL = (
+    "ref,forecaster,said_at,instrument,claim,horizon\n"
+    "C1,c.oren,2024-01-01,AAA,ends above 102,2 days\n"
+)
 
 
 def test_a_corrected_price_changes_a_result_and_says_so(tmp_path):

@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from foresaid.chance.base_rate import BaseRate, Starts, base_rates
 from foresaid.chance.simulation import draw_steps, simulated_chance
-from foresaid.chance.volatility import modelled_chance, rolling_volatility
+from foresaid.chance.volatility import (
+    has_closed_form,
+    modelled_chance,
+    rolling_volatility,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -98,8 +102,7 @@ def chances(
         for field in fields(BaseRate):
             getattr(counts, field.name)[rows] = getattr(found, field.name)
         walk = _Model(bars, part, deviation[rows], found.disjoint < rules.enough_windows)
-        closed = bool(kind.kernel.bounds)
-        modelled[rows] = walk.of_bounds(kind) if closed else walk.by_simulation(kind, rules)
+        modelled[rows] = walk.chance(kind, rules)
     bounded = np.clip(modelled, rules.modelled_floor, 1.0 - rules.modelled_floor)
     chance, model = combine(counts, bounded, enough=rules.enough_windows)
     return Chances(
@@ -116,18 +119,25 @@ class _Model:
     deviation: FloatArray
     is_short: BoolArray
 
-    def of_bounds(self, kind: Kind) -> FloatArray:
-        """Return the chances in closed form."""
-        return modelled_chance(
-            kind.kernel.bounds,
-            self.starts.marks,
-            additive=self.starts.additive,
+    def chance(self, kind: Kind, rules: ChanceRules) -> FloatArray:
+        """Return the chances in closed form, by simulation where there is none."""
+        starts, bounds = self.starts, kind.kernel.bounds
+        has_range = self.bars.has_range[np.maximum(starts.reference - 1, 0)]
+        result = modelled_chance(
+            bounds,
+            starts.marks,
+            additive=starts.additive,
             deviation=self.deviation,
-            n_sessions=expected_sessions(self.bars, self.starts),
-            has_range=self.bars.has_range[np.maximum(self.starts.reference - 1, 0)],
+            n_sessions=expected_sessions(self.bars, starts),
+            has_range=has_range,
         )
+        closed = has_closed_form(
+            bounds, starts.marks, additive=starts.additive, has_range=has_range
+        )
+        open_form = replace(self, is_short=self.is_short & ~closed)
+        return np.where(closed, result, open_form._by_simulation(kind, rules))
 
-    def by_simulation(self, kind: Kind, rules: ChanceRules) -> FloatArray:
+    def _by_simulation(self, kind: Kind, rules: ChanceRules) -> FloatArray:
         """Return the chances by simulation, only where history is short."""
         result = np.full(len(self.deviation), np.nan)
         rows = np.flatnonzero(self.is_short)

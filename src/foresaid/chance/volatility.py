@@ -101,6 +101,28 @@ def modelled_chance(
     return result
 
 
+def has_closed_form(
+    bounds: tuple[Bound, ...],
+    marks: FloatArray,
+    *,
+    additive: BoolArray,
+    has_range: BoolArray,
+) -> BoolArray:
+    """Return where ``modelled_chance`` has a formula, shape (n,).
+
+    A path watched only at closes has none where its mark is not ahead of the reference: the
+    first closes decide there, and the shifted barrier says nothing about them.
+    """
+    if not bounds:
+        return np.zeros(len(marks), dtype=bool)
+    bound = bounds[0]
+    if len(bounds) > 1 or bound.over is Over.END or bound.side == 0:
+        return np.ones(len(marks), dtype=bool)
+    ahead = (marks[:, bound.mark] - np.where(additive, 0.0, 1.0)) * bound.side
+    is_ahead = ahead > 0 if bound.over is Over.ANY else ahead < 0
+    return is_ahead | _sees_path(bound, has_range)
+
+
 def _sees_path(bound: Bound, has_range: BoolArray) -> BoolArray:
     return has_range & (bound.on is On.RANGE)
 

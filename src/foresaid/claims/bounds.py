@@ -20,6 +20,11 @@ class BoundKernel(Kernel):
     bounds: tuple[Bound, ...]
     fits_anywhere = True
 
+    @property
+    def reads_range(self) -> bool:  # type: ignore[override]
+        """Whether any bound looks at highs and lows."""
+        return any(bound.on is On.RANGE for bound in self.bounds)
+
     def judge(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
     ) -> Judged:

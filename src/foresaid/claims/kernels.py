@@ -106,12 +106,15 @@ class Kernel(ABC):
         The comparisons it consists of, empty where it is more than comparisons.
     needs_legs : bool
         Whether it looks at other instruments.
+    reads_range : bool
+        Whether it looks at highs and lows.
     fits_anywhere : bool
         Whether marks that fit one window fit all: ``unsound`` depends on nothing else.
     """
 
     bounds: tuple[Bound, ...] = ()
     needs_legs: bool = False
+    reads_range: bool = False
     fits_anywhere: bool = False
 
     @abstractmethod

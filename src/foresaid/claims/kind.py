@@ -57,6 +57,8 @@ class Kind:
         What it means on an instrument whose sense is inverse, where that differs.
     ascending : bool
         Whether the second level must be above the first.
+    units_barred : tuple of str
+        Units of size that have no meaning for it.
     measures : str
         What ``Judged.measured`` is, where it is not the move from the reference.
     names_level : bool
@@ -71,6 +73,7 @@ class Kind:
     alternates: dict[str, Kernel] = field(default_factory=dict)
     inverse: Kind | None = None
     ascending: bool = False
+    units_barred: tuple[str, ...] = ()
     measures: str = ""
     names_level: bool = False
 

@@ -41,17 +41,18 @@ class DrawdownKernel(Kernel):
         still running are always a leading slice.
         """
         order = np.argsort(windows.first - windows.last, kind="stable")
-        own, keep = windows.take(order), marks[order, 0]
+        own = windows.take(order)
+        fall = _Fall(marks[order, 0], own.additive, tolerance)
         length = own.last - own.first + 1
-        peak, under = self._state_before(bars, own, keep, tolerance)
+        peak, under = self._state_before(bars, own, fall)
         decided, deepest = own.last.copy(), np.zeros(len(own))
         hit = np.zeros(len(own), dtype=bool)
         for step in range(int(length.max(initial=0))):
             live = slice(0, int(np.searchsorted(-length, -step, side="left")))
             close = bars.close[own.first[live] + step]
             np.maximum(peak[live], close, out=peak[live])
-            is_under = close <= peak[live] * keep[live] * (1.0 + tolerance)
-            np.maximum(deepest[live], 1.0 - close / peak[live], out=deepest[live])
+            is_under = fall.reaches(close, peak[live], live)
+            np.maximum(deepest[live], fall.depth(close, peak[live], live), out=deepest[live])
             new = is_under & ~under[live] & ~hit[live]
             decided[live][new] = (own.first[live] + step)[new]
             hit[live] |= new
@@ -64,7 +65,7 @@ class DrawdownKernel(Kernel):
         return Judged(*(column[back] for column in vars(found).values()))
 
     def _state_before(
-        self, bars: Bars, windows: Windows, keep: FloatArray, tolerance: float
+        self, bars: Bars, windows: Windows, fall: _Fall
     ) -> tuple[FloatArray, BoolArray]:
         """Return the peak before the first session, and whether the price was under then."""
         start, last = _before(windows), windows.first - 1
@@ -73,9 +74,28 @@ class DrawdownKernel(Kernel):
         under = np.zeros(len(windows), dtype=bool)
         rows = np.flatnonzero(has)
         peak[rows] = extreme_of(bars.close, start[rows], last[rows], largest=True)
-        close = bars.close[last[rows]]
-        under[rows] = close <= peak[rows] * keep[rows] * (1.0 + tolerance)
+        under[rows] = fall.reaches(bars.close[last[rows]], peak[rows], rows)
         return peak, under
+
+
+@dataclass(frozen=True)
+class _Fall:
+    """How far under its peak a price has to be: a part of it, or points where additive."""
+
+    mark: FloatArray
+    additive: BoolArray
+    tolerance: float
+
+    def reaches(self, close: FloatArray, peak: FloatArray, rows: slice | IntArray) -> BoolArray:
+        """Return whether each close is at or under its mark below the peak."""
+        limit = np.where(self.additive[rows], peak + self.mark[rows], peak * self.mark[rows])
+        reached: BoolArray = close <= limit + self.tolerance * np.abs(peak)
+        return reached
+
+    def depth(self, close: FloatArray, peak: FloatArray, rows: slice | IntArray) -> FloatArray:
+        """Return how far each close is below the peak, as a part of it or in points."""
+        with np.errstate(divide="ignore", invalid="ignore"):
+            return np.where(self.additive[rows], peak - close, 1.0 - close / peak)
 
 
 @dataclass(frozen=True)
@@ -182,6 +202,8 @@ class RaceKernel(Kernel):
     Neither by the deadline is a miss. Where both are touched in the first session that
     touches either, daily prices cannot tell which came first.
     """
+
+    reads_range = True
 
     def judge(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float

@@ -149,16 +149,19 @@ def unit_faults(
                     f"the level {level} cannot be a price of {_with_article(kind_name)}",
                     "Write a level above zero.",
                 )
-        elif quantity.unit not in instrument_kind.units:
-            return _wrong_unit(quantity, kind_name, instrument_kind)
+        elif quantity.unit not in _units_allowed(claim, instrument_kind):
+            return _wrong_unit(quantity, kind_name, _units_allowed(claim, instrument_kind))
     return None
 
 
-def _wrong_unit(
-    quantity: Quantity, kind_name: str, instrument_kind: InstrumentKind
-) -> PhraseError:
+def _units_allowed(claim: Claim, instrument_kind: InstrumentKind) -> tuple[str, ...]:
+    barred = KINDS[claim.kind].units_barred
+    return tuple(unit for unit in instrument_kind.units if unit not in barred)
+
+
+def _wrong_unit(quantity: Quantity, kind_name: str, units: tuple[str, ...]) -> PhraseError:
     number = print_number(quantity.value)
-    if quantity.unit == "%" and "pp" in instrument_kind.units:
+    if quantity.unit == "%" and "pp" in units:
         return PhraseError(
             f"`{number}%` of {_with_article(kind_name)} has two readings: {number} percentage "
             f"points, or {number} percent of its value (at 4.00 that is "
@@ -166,7 +169,7 @@ def _wrong_unit(
             f"Write `{number}pp` for the first, or the second in basis points, such as "
             f"`{print_number(round(4.0 * quantity.value, 9))}bp`.",
         )
-    allowed = " or ".join(f"`{number}{unit}`" for unit in instrument_kind.units)
+    allowed = " or ".join(f"`{number}{unit}`" for unit in units)
     return PhraseError(
         f"{_with_article(kind_name)} does not move in `{quantity.unit}`", f"Write {allowed}."
     )
@@ -212,10 +215,6 @@ def _fill(kind: Kind, words: list[str]) -> Claim:
             others.append(word)
         elif slot:
             quantities.append(_READERS[slot.group(1)](word, kind))
-    if not others and kind.form.endswith(LIST):
-        raise PhraseError(
-            f"`{words[-1]}` names no instrument", f"Write `{_example(kind.name)}`."
-        )
     if not others and kind.form.endswith(LIST):
         raise PhraseError(
             f"`{words[-1]}` names no instrument", f"Write `{_example(kind.name)}`."

@@ -264,6 +264,7 @@ register(
         (LOSS,),
         DrawdownKernel(),
         "down",
+        units_barred=("pt",),
         measures="the deepest fall from the running peak in the window, as a part of it",
     )
 )

@@ -89,7 +89,7 @@ class CallRow(RowReader):
         is_call = claim is None or claim.is_call
         instrument = self._instrument(needed=is_call)
         said, said_on = self._said(instrument)
-        self._check_units(claim, instrument)
+        self._check_claim(claim, instrument, column="claim")
         horizon = self._horizon(said_on, needed=is_call)
         likelihood = self._probability(claim)
         given = self._given(said_on)
@@ -191,7 +191,10 @@ class CallRow(RowReader):
             return None
         return self.context.instruments.get(self._known("instrument", self.context.instruments))
 
-    def _check_units(self, claim: Claim | None, instrument: Instrument | None) -> None:
+    def _check_claim(
+        self, claim: Claim | None, instrument: Instrument | None, *, column: str
+    ) -> None:
+        """Check a claim against the instrument it is made about."""
         if claim is None or instrument is None:
             return
         for symbol in claim.others:
@@ -199,11 +202,11 @@ class CallRow(RowReader):
                 close = nearest(symbol, self.context.instruments)
                 message = f"`{clip(symbol)}` is no other known instrument"
                 hint = f"The nearest known is `{close}`." if close else "Import it first."
-                self.fault("claim", "unknown-instrument", message, hint)
+                self.fault(column, "unknown-instrument", message, hint)
         kind = self.context.codebook.instrument_kinds[instrument.kind]
         fault = unit_faults(claim, instrument.kind, kind)
         if fault is not None:
-            self.fault("claim", "bad-unit", fault.message, fault.hint)
+            self.fault(column, "bad-unit", fault.message, fault.hint)
 
     def _said(self, instrument: Instrument | None) -> tuple[SaidAt | None, date | None]:
         """Return when it was said, and the date in the venue's zone."""
@@ -257,13 +260,16 @@ class CallRow(RowReader):
         )
         if condition is None:
             return ""
-        if condition.claim is not None and condition.instrument not in self.context.instruments:
-            self.fault(
-                "given",
-                "unknown-instrument",
-                f"there is an unknown `{clip(condition.instrument)}` as instrument",
-                "A condition begins with a known instrument or with `fact:`.",
-            )
+        if condition.claim is not None:
+            instrument = self.context.instruments.get(condition.instrument)
+            if instrument is None:
+                self.fault(
+                    "given",
+                    "unknown-instrument",
+                    f"`{clip(condition.instrument)}` is no known instrument",
+                    "A condition begins with a known instrument or with `fact:`.",
+                )
+            self._check_claim(condition.claim, instrument, column="given")
         return str(condition.text)
 
     def _phrase(self, column: str, code: str, read: Callable[[str], Any]) -> Any:  # noqa: ANN401

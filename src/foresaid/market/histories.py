@@ -86,15 +86,16 @@ class Market:
     def in_file_units(self, price: FloatArray, positions: IntArray) -> FloatArray:
         """Return continuous prices as they stand in the file, shape (n,).
 
-        Undoing the factor may leave an error in the last place, so where there is one the
-        price is kept to 12 significant digits.
+        Undoing a factor, a conversion or an exchange may leave an error in the last places:
+        a price that 12 significant digits state but for that error is given with those.
         """
         factor = self.bars.factor[positions]
         plain = price / factor
         with np.errstate(divide="ignore", invalid="ignore"):
             places = np.power(10.0, 11.0 - np.floor(np.log10(np.abs(plain))))
-            kept = np.where(np.isfinite(places), np.round(plain * places) / places, plain)
-        return np.where(factor == 1.0, price, kept)
+            short = np.where(np.isfinite(places), np.round(plain * places) / places, plain)
+        noise = 8.0 * np.finfo(np.float64).eps * np.abs(plain)
+        return np.where(np.abs(short - plain) <= noise, short, plain)
 
 
 def build_market(

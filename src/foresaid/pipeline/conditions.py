@@ -1,17 +1,18 @@
 """Calls under a condition: their clock starts when the condition has come true.
 
 A condition on an instrument is settled like a call of its own, said when the call was said.
-When it comes true in a session, the call counts as said on that day, before its close; the
-horizon is counted anew from there. A plain fact starts the clock at the time a person decided
-it came true. A condition that is not met makes the call void, one that is undecided leaves it
-open.
+When it comes true in a session, the call counts as said at that session's close (before the
+close of that day where the venue's hours are not known); the horizon is counted anew from
+there. A plain fact starts the clock at the time a person decided it came true. A condition
+that is not met makes the call void, one that is undecided leaves it open.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from datetime import date, timedelta
+from datetime import date, datetime, time, timedelta
 from typing import TYPE_CHECKING
+from zoneinfo import ZoneInfo
 
 import numpy as np
 import pandas as pd
@@ -118,10 +119,27 @@ def _settled(
     for at, row in enumerate(rows):
         result = outcomes.result[at]
         if result == "hit":
-            answers[row] = _Met(int(world.market.bars.day[outcomes.decided[at]]), -1.0)
+            day = int(world.market.bars.day[outcomes.decided[at]])
+            own = world.instruments[int(calls.times.instrument[row])]
+            answers[row] = _close_of(world, int(coded.times.instrument[at]), day, own.zone)
         else:
             answers[row] = UNDECIDED if result == "open" else NOT_MET
     return answers
+
+
+def _close_of(world: World, number: int, day: int, zone: str) -> _Met:
+    """Return the close of a session in the zone of the call's venue.
+
+    Only the day is known where the condition's venue has no zone or no hours.
+    """
+    venue = world.instruments[number]
+    if not (venue.zone and venue.closes and zone) or venue.closes == "24:00":
+        return _Met(day, -1.0)
+    hours, minutes = map(int, venue.closes.split(":"))
+    local = datetime.combine(EPOCH + timedelta(days=day), time(hours, minutes))
+    instant = local.replace(tzinfo=ZoneInfo(venue.zone)).isoformat(timespec="seconds")
+    there, minute = local_times([instant], [zone])
+    return _Met(int(there[0]), float(minute[0]))
 
 
 def _restarted(
@@ -144,7 +162,11 @@ def _restarted(
     return replace(
         calls,
         times=replace(
-            times, said_day=said_day, said_minute=said_minute, deadline_day=deadline_day
+            times,
+            said_day=said_day,
+            said_minute=said_minute,
+            deadline_day=deadline_day,
+            stated_day=times.said_day,
         ),
         claims=replace(claims, blocked=blocked, is_void=is_void),
     )

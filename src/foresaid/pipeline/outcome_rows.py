@@ -9,7 +9,6 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 import pandas as pd
 
-from foresaid.claims.kernels import On
 from foresaid.claims.registry import KINDS, NOT_A_CALL
 from foresaid.claims.relative import RelativeKernel
 from foresaid.settle.outcomes import HIT, NONE
@@ -215,7 +214,7 @@ def _disagrees(outcomes: Outcomes) -> BoolArray:
     result = np.zeros(len(hit), dtype=bool)
     for values in outcomes.alternates.values():
         result |= (values != NONE) & ((values == HIT) != hit)
-    return result
+    return result & (outcomes.decided >= 0)
 
 
 def _is_converted(found: Judgement) -> BoolArray:
@@ -251,10 +250,7 @@ def _lacks_range(found: Judgement) -> BoolArray:
     """Return where a claim on highs and lows was judged on closes for want of them."""
     bars, windows = found.world.market.bars, found.outcomes.resolved.windows
     kinds = found.calls.claims.kind
-    wanted = np.array(
-        [any(bound.on is On.RANGE for bound in KINDS[kind].kernel.bounds) for kind in kinds],
-        dtype=bool,
-    )
+    wanted = np.array([KINDS[kind].kernel.reads_range for kind in kinds], dtype=bool)
     missing = np.concatenate(([0], np.cumsum(~bars.has_range)))
     judged = wanted & (found.outcomes.decided >= 0)
     first = np.clip(windows.first, 0, len(missing) - 1)

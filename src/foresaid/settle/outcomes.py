@@ -24,6 +24,7 @@ if TYPE_CHECKING:
 CHUNK = 32_768  # windows judged at once: small enough to stay in the processor's cache
 NONE, MISS, HIT = -1, 0, 1
 CLOSE_BEFORE = "close_before"
+ENDED_LEG = "an instrument of the comparison ended, which comparisons do not handle yet"
 SHORTER, LONGER = "shorter", "longer"  # of imputed horizons, filled in by the pipeline
 
 
@@ -156,6 +157,10 @@ def settle_calls(
     for group in group_calls(claims.kind, inverse, order):
         if group.kind.direction != "by level":
             work.direction[group.rows] = group.kind.direction
+        if group.kind.kernel.needs_legs:
+            ended = np.zeros(len(order), dtype=bool)
+            ended[group.rows] = _legs_ended(times, market)[group.rows]
+            work.leave(ended, "open", ENDED_LEG)
         if any(mark.role == "level" for mark in group.kind.marks):
             barred = np.zeros(len(order), dtype=bool)
             barred[group.rows] = total_return[group.rows]
@@ -166,9 +171,21 @@ def settle_calls(
     return work.outcomes()
 
 
+def _legs_ended(times: CallTimes, market: Market) -> BoolArray:
+    """Return where an instrument of a comparison came to a fixed amount before the deadline."""
+    due = np.where(times.sessions > 0, market.as_of_day, times.deadline_day)
+    ended = np.where(market.is_over, market.ended_day, np.iinfo(np.int64).max)
+    result: BoolArray = ended[times.instrument] <= due
+    if times.legs is not None:
+        last = np.append(ended, np.iinfo(np.int64).max)
+        result |= (last[times.legs] <= due[:, None]).any(axis=1)
+    return result
+
+
 def level_factors(times: CallTimes, market: Market) -> FloatArray:
     """Return continuous price over stated price on the day of each statement."""
-    return market.level_factor(times.instrument, times.said_day)
+    stated = times.said_day if times.stated_day is None else times.stated_day
+    return market.level_factor(times.instrument, stated)
 
 
 class _Work:

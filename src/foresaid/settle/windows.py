@@ -38,6 +38,9 @@ class CallTimes:
         Deadline in sessions after the reference, 0 where it is a date.
     legs : ndarray of int, shape (n, n_legs), or None
         Numbers of the other instruments that claims name, -1 for none.
+    stated_day : ndarray of int, or None
+        Day in whose units levels are stated, where a clock started later; None where it is
+        the day of publication.
     """
 
     instrument: IntArray
@@ -46,6 +49,7 @@ class CallTimes:
     deadline_day: IntArray
     sessions: IntArray
     legs: IntArray | None = None
+    stated_day: IntArray | None = None
 
 
 @dataclass(frozen=True)
@@ -150,9 +154,11 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         # positions that mean nothing still have to be positions
         reference[odd] = np.minimum(reference[odd], np.maximum(end, floor[odd]))
         first[odd] = np.minimum(first[odd], last[odd])
-    additive = market.venue.additive.take(number)
-    windows = Windows(floor, reference, first, last, additive, times.legs)
-    return Resolved(windows, sound, running, reason, sound & rolled)
+    windows = Windows(
+        floor, reference, first, last, market.venue.additive.take(number), times.legs
+    )
+    rolled = sound & rolled & (times.deadline_day < market.ended_day.take(number))
+    return Resolved(windows, sound, running, reason, rolled)
 
 
 @dataclass(frozen=True)
