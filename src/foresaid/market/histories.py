@@ -50,6 +50,8 @@ class Venue:
         Whether it trades on Saturdays and Sundays.
     total_return : ndarray of bool
         Whether its only prices are a total-return series, which has no levels.
+    market : ndarray of str
+        Market code, empty where it is not known; instruments of one market share its days.
     """
 
     opens: IntArray
@@ -58,6 +60,7 @@ class Venue:
     additive: BoolArray
     weekends: BoolArray
     total_return: BoolArray
+    market: np.ndarray[Any, np.dtype[np.object_]]
 
 
 @dataclass(frozen=True)
@@ -231,6 +234,7 @@ def _venue(
         additive=np.array([kind.scale == "difference" for kind in kinds], dtype=bool),
         weekends=np.array([kind.weekends for kind in kinds], dtype=bool),
         total_return=np.asarray(total_return, dtype=bool),
+        market=np.array([one.market for one in instruments], dtype=object),
     )
 
 

@@ -9,7 +9,13 @@ import numpy as np
 
 from foresaid.claims.binding import bind
 from foresaid.claims.registry import KINDS
-from foresaid.settle.windows import REASONS, VOID_REASONS, resolve_windows
+from foresaid.settle.missing import MISSING, lacks_session
+from foresaid.settle.windows import (
+    REASONS,
+    VOID_REASONS,
+    publication_days,
+    resolve_windows,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -149,6 +155,8 @@ def settle_calls(
     """
     resolved = resolve_windows(times, market, rules)
     work = _Work(claims, market, resolved, rules, level_factors(times, market))
+    reference_day, _ = publication_days(times, market, rules)
+    work.leave(lacks_session(times, resolved, reference_day, market), "open", MISSING)
     work.leave(claims.blocked != "", "open", claims.blocked)
     if claims.is_void is not None:
         work.leave(claims.is_void, "void", claims.blocked)
