@@ -64,7 +64,11 @@ def _kernel_way(setting, kind_name):
     for begin in range(0, N_CALLS, CHUNK):
         part = slice(begin, min(begin + CHUNK, N_CALLS))
         own = CallTimes(
-            *(getattr(times, name)[part] for name in CallTimes.__dataclass_fields__)
+            times.instrument[part],
+            times.said_day[part],
+            times.said_minute[part],
+            times.deadline_day[part],
+            times.sessions[part],
         )
         windows = resolve_windows(own, market, BOOK.settlement).windows
         n = len(windows)
@@ -173,3 +177,41 @@ def test_touches_against_a_loop_over_calls(benchmark, setting):
     benchmark.extra_info["ratio"] = slow / fast
     benchmark(_kernel_way, setting, "touches")
     assert slow / fast >= 500, f"only {slow / fast:.1f} times faster"
+
+
+def test_drawdowns_against_a_loop_over_calls(benchmark, setting):
+    """Falls of 10 % from the running peak, newly crossed in the window."""
+    market, histories, times, _ = setting
+    kind = KINDS["drawdown"]
+    rows = np.random.default_rng(4).choice(N_CALLS, SAMPLE, replace=False)
+    closes = [pd.Series(h.close, index=h.day) for h in histories.values()]
+    windows = resolve_windows(times, market, BOOK.settlement).windows
+    marks = np.full((N_CALLS, 1), 0.9)
+
+    def obvious():
+        found = []
+        for row in rows:
+            close = closes[times.instrument[row]]
+            start = close.index.searchsorted(times.said_day[row])
+            end = close.index.searchsorted(times.deadline_day[row], side="right")
+            piece = close.iloc[max(0, start - 252) : end]
+            under = piece <= piece.cummax() * 0.9
+            new = under & ~under.shift(fill_value=False)
+            begin = times.said_day[row] + 1
+            found.append(bool(new[new.index >= begin].any()))
+        return np.array(found)
+
+    def ours():
+        hits = np.empty(N_CALLS, dtype=bool)
+        for begin in range(0, N_CALLS, CHUNK):
+            part = slice(begin, begin + CHUNK)
+            hits[part] = kind.kernel.hits(market.bars, windows.take(part), marks[part], 1e-9)
+        return hits
+
+    sampled, expected = _timed(obvious, repeats=2)
+    slow = sampled * N_CALLS / SAMPLE
+    fast, hits = _timed(ours, repeats=5)
+    assert (hits[rows] == expected).all()
+    benchmark.extra_info["ratio"] = slow / fast
+    benchmark(ours)
+    assert slow / fast >= 150, f"only {slow / fast:.1f} times faster"

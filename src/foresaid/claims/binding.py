@@ -57,7 +57,7 @@ def bind(
     columns = [
         _mark(mark, values, units, reference, level_factor, additive) for mark in kind.marks
     ]
-    return np.stack(columns, axis=1)
+    return columns[0][:, None] if len(columns) == 1 else np.stack(columns, axis=1)
 
 
 def _mark(
@@ -69,9 +69,8 @@ def _mark(
     additive: BoolArray,
 ) -> FloatArray:
     here = np.where(additive, 0.0, 1.0)
-    bare = {"here": here, "nothing": np.zeros(len(reference))}
-    if mark.role in bare:
-        return bare[mark.role]
+    if mark.role in ("here", "nothing"):
+        return here if mark.role == "here" else np.zeros(len(reference))
     stated = values[:, mark.quantity]
     if mark.role == "share":
         return stated / 100.0

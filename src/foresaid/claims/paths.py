@@ -35,34 +35,55 @@ class DrawdownKernel(Kernel):
     def judge(
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
     ) -> Judged:
-        """Judge window ``i`` against its own mark; see ``Kernel.judge``.
+        """Judge window ``i`` against its own mark; see ``Kernel.judge``."""
+        hit, decided, depth = self._walk(bars, windows, marks, tolerance, wants_depth=True)
+        value, tie = bars.close[decided], np.zeros_like(hit)
+        return Judged(hit, decided, value, depth, hit.copy(), tie)
+
+    def hits(
+        self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
+    ) -> BoolArray:
+        """Return only whether each claim came true; see ``Kernel.hits``."""
+        return self._walk(bars, windows, marks, tolerance, wants_depth=False)[0]
+
+    def _walk(
+        self,
+        bars: Bars,
+        windows: Windows,
+        marks: FloatArray,
+        tolerance: float,
+        *,
+        wants_depth: bool,
+    ) -> tuple[BoolArray, IntArray, FloatArray]:
+        """Return whether and when each window's fall was reached, and the deepest fall.
 
         All windows are walked session by session at once, longest first, so that the windows
         still running are always a leading slice.
         """
         order = np.argsort(windows.first - windows.last, kind="stable")
         own = windows.take(order)
-        fall = _Fall(marks[order, 0], own.additive, tolerance)
+        fall = _Fall(marks[order, 0], own.additive, tolerance, bool(own.additive.any()))
         length = own.last - own.first + 1
         peak, under = self._state_before(bars, own, fall)
         decided, deepest = own.last.copy(), np.zeros(len(own))
         hit = np.zeros(len(own), dtype=bool)
+        at = own.first.copy()
         for step in range(int(length.max(initial=0))):
             live = slice(0, int(np.searchsorted(-length, -step, side="left")))
-            close = bars.close[own.first[live] + step]
+            close = bars.close.take(at[live])
             np.maximum(peak[live], close, out=peak[live])
             is_under = fall.reaches(close, peak[live], live)
-            np.maximum(deepest[live], fall.depth(close, peak[live], live), out=deepest[live])
-            new = is_under & ~under[live] & ~hit[live]
-            decided[live][new] = (own.first[live] + step)[new]
-            hit[live] |= new
+            if wants_depth:
+                depth = fall.depth(close, peak[live], live)
+                np.maximum(deepest[live], depth, out=deepest[live])
+            new = np.flatnonzero(is_under & ~(under[live] | hit[live]))
+            decided[new] = at[new]
+            hit[new] = True
             under[live] = is_under
+            at[live] += 1
         back = np.empty_like(order)
         back[order] = np.arange(len(order))
-        value = bars.close[decided]
-        final, tie = hit.copy(), np.zeros_like(hit)
-        found = Judged(hit, decided, value, deepest, final, tie)
-        return Judged(*(column[back] for column in vars(found).values()))
+        return hit[back], decided[back], deepest[back]
 
     def _state_before(
         self, bars: Bars, windows: Windows, fall: _Fall
@@ -85,11 +106,15 @@ class _Fall:
     mark: FloatArray
     additive: BoolArray
     tolerance: float
+    any_additive: bool
 
     def reaches(self, close: FloatArray, peak: FloatArray, rows: slice | IntArray) -> BoolArray:
         """Return whether each close is at or under its mark below the peak."""
-        limit = np.where(self.additive[rows], peak + self.mark[rows], peak * self.mark[rows])
-        reached: BoolArray = close <= limit + self.tolerance * np.abs(peak)
+        limit = peak * (self.mark[rows] + self.tolerance)
+        if self.any_additive:
+            points = peak + self.mark[rows] + self.tolerance * np.abs(peak)
+            limit = np.where(self.additive[rows], points, limit)
+        reached: BoolArray = close <= limit
         return reached
 
     def depth(self, close: FloatArray, peak: FloatArray, rows: slice | IntArray) -> FloatArray:

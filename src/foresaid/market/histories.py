@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from foresaid.market.actions import FactorSteps, factor_steps
-from foresaid.market.endings import are_over, ended_days, ending_of, with_endings
+from foresaid.market.endings import NEVER, are_over, ended_days, ending_of, with_endings
 from foresaid.model.bars import Bars, concatenate_bars
 
 if TYPE_CHECKING:
@@ -77,6 +78,11 @@ class Market:
     as_of_day: int
     ended_day: IntArray
     is_over: BoolArray
+
+    @cached_property
+    def has_endings(self) -> bool:
+        """Whether any instrument has ended."""
+        return bool((self.ended_day < NEVER).any())
 
     def level_factor(self, instrument: IntArray, day: IntArray) -> FloatArray:
         """Return continuous price over a price stated on that day, shape (n,)."""

@@ -15,6 +15,7 @@ from foresaid.claims.registry import KINDS
 from foresaid.ledger import queries
 from foresaid.model.codebook import parse_codebook
 from foresaid.model.errors import UsageError
+from foresaid.pipeline.listing import CALL_COLUMNS
 from foresaid.pipeline.scoring import listed_calls
 from foresaid.pipeline.settling import judge
 
@@ -69,15 +70,16 @@ def trace_call(ledger: Ledger, ref: str) -> Trace:
     row = {str(name): value for name, value in found.iloc[0].items()}
     if row["result"] is None:
         raise UsageError(f"{ref} came after the last settlement. Run: foresaid settle")
+    listed = {name: row[name] for name in CALL_COLUMNS}
     alternates = json.loads(row["alternates"] or "{}")
     if row["not_a_call"]:
-        return Trace(row, _screened(row), [], {})
+        return Trace(listed, _screened(row), [], {})
     book = parse_codebook(queries.codebook_source(ledger, settlement.codebook), file="ledger")
     frame = queries.calls(ledger)
     frame = frame[frame["ref"] == ref].reset_index(drop=True)
     judged = judge(ledger, frame, book, as_of=settlement.as_of, vintage=settlement.vintage)
     teller = _Teller(row, judged, book, settlement)
-    return Trace(row, teller.steps(), teller.prices(ledger), alternates)
+    return Trace(listed, teller.steps(), teller.prices(ledger), alternates)
 
 
 def _screened(row: dict[str, Any]) -> list[tuple[str, str]]:

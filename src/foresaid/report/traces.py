@@ -28,7 +28,7 @@ def trace_text(
     width: int,
 ) -> str:
     """Return the trace as lines of at most ``width`` characters."""
-    lines = [f"{call['ref']}: {call['result']}", ""]
+    lines = [f"{call['ref']}: {call['outcome']}", ""]
     for name, text in steps:
         lines += _entry(name, text, width)
     for price in prices:

@@ -124,7 +124,7 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
     dated = times.sessions == 0
     if is_due_beyond.any():
         _weekends_may_pass(reached, times, market)
-        reached |= market.is_over[number]
+        reached |= market.is_over.take(number)
     if not dated.all():
         end = bars.last_position[number]
         last = np.where(dated, last, reference + times.sessions)
@@ -141,24 +141,26 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         sound[far], reason[far] = False, NO_DEADLINE_PRICE
     odd = np.flatnonzero(~sound & (reason == FINE))
     if len(odd):
-        state = _State(
-            begun[odd],
-            reached[odd],
-            dated[odd],
-            last[odd] - reference[odd],
-            times.deadline_day[odd],
-        )
+        length = last[odd] - reference[odd]
+        state = _State(begun[odd], reached[odd], dated[odd], length, times.deadline_day[odd])
         reason[odd] = _reasons(state, market)
         end = bars.last_position[number[odd]]
         running[odd] = state.begun & ~state.reached & (first[odd] <= end)
         # positions that mean nothing still have to be positions
         reference[odd] = np.minimum(reference[odd], np.maximum(end, floor[odd]))
         first[odd] = np.minimum(first[odd], last[odd])
-    windows = Windows(
-        floor, reference, first, last, market.venue.additive.take(number), times.legs
+    additive = market.venue.additive.take(number)
+    windows = Windows(floor, reference, first, last, additive, times.legs)
+    return Resolved(
+        windows, sound, running, reason, _rolled_back(rolled & sound, times, market)
     )
-    rolled = sound & rolled & (times.deadline_day < market.ended_day.take(number))
-    return Resolved(windows, sound, running, reason, rolled)
+
+
+def _rolled_back(rolled: BoolArray, times: CallTimes, market: Market) -> BoolArray:
+    """Return where a deadline was no session of an instrument that still traded."""
+    if market.has_endings:
+        rolled &= times.deadline_day < market.ended_day.take(times.instrument)
+    return rolled
 
 
 @dataclass(frozen=True)
