@@ -108,10 +108,9 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         Shape (n,).
     """
     bars, number = market.bars, times.instrument
-    calendar = bars.calendar(number)
     reference_day, path_waits = publication_days(times, market, rules)
-    floor = bars.offsets.take(number)
     # the first session on or after the day, and the first after it
+    calendar, floor = bars.calendar(number), bars.offsets.take(number)
     by_then, is_session, is_beyond = calendar.look_up(reference_day)
     reference = by_then + 1 - is_session
     first = (
