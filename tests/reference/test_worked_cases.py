@@ -5,12 +5,11 @@ wrong answer is tempting. Its instruments carry their prices: `rows` with the co
 `columns` (`session, close` where none are), or a `start` with `closes` on the weekdays from it
 (`days = "all"`: on every day), less the `closed` days; `[100, 3]` stands for three closes of
 100. `highs`, `lows` and `totals` stand beside the closes. Instruments under `shared` belong to
-every case of their file.
+every case of their file. The closing time of a venue is `closes_at`.
 """
 
 import csv
 import io
-import json
 import re
 import tomllib
 from datetime import date, timedelta
@@ -108,7 +107,11 @@ def _files(case):
     things = case["instruments"]
     plain = [
         {"instrument": symbol}
-        | {k: v for k, v in thing.items() if k not in PRICE_KEYS | OTHER_KEYS}
+        | {
+            "closes" if k == "closes_at" else k: v
+            for k, v in thing.items()
+            if k not in PRICE_KEYS | OTHER_KEYS
+        }
         for symbol, thing in things.items()
     ]
     yield "instruments", (), _csv(plain)
@@ -166,7 +169,7 @@ def _codebook(case, folder):
 
 
 def _settled(case, folder):
-    """Return the row of the list of calls and the trace."""
+    """Return the row of the list of calls, and the trace as one line."""
     ledger, book = Ledger(folder), _codebook(case, folder)
     ledger.fill(case, *book)
     for one in case.get("decisions", []):
@@ -174,9 +177,7 @@ def _settled(case, folder):
         ledger.run("decide", "W-1", one["answer"], *known)
     ledger.run("settle", "--as-of", str(case["as_of"]), *book)
     (row,) = csv.DictReader(io.StringIO(ledger.run("calls", "--format", "csv")))
-    text = ledger.run("trace", "W-1")
-    steps = json.loads(ledger.run("trace", "W-1", "--format", "json"))
-    return row, " ".join(text.split()), steps
+    return row, " ".join(ledger.run("trace", "W-1").split())
 
 
 # --------------------------------------------------------------------------------- the tests
@@ -200,12 +201,11 @@ def _compare(row, expected):
 
 @pytest.mark.parametrize("case", CASES, ids=[f"{c['file']}: {c['name']}" for c in CASES])
 def test_a_case_settles_as_worked_by_hand(case, tmp_path):
-    row, text, steps = _settled(case, tmp_path)
+    row, text = _settled(case, tmp_path)
     assert _compare(row, case["expect"]) == {}, case["rule"]
     assert row["outcome"] in text
     for column in ("reference_session", "decided_session", "reason"):
         assert row[column] in text, column
-    assert steps["call"]["result"] == row["outcome"]
 
 
 def test_every_case_is_explained():

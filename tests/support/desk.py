@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import io
 import json
+import shutil
 import sqlite3
 from contextlib import closing
 
@@ -82,12 +83,18 @@ def csv_rows(text):
 
 
 class Desk:
-    """One ledger and a folder of files beside it."""
+    """One ledger and a folder of files beside it.
 
-    def __init__(self, folder):
+    The ledger is new, or a copy of another desk's, which is quicker than filling a new one.
+    """
+
+    def __init__(self, folder, *, like=None):
         self.folder = folder
         self.ledger = folder / "desk.foresaid"
-        invoke("new", self.ledger)
+        if like is None:
+            invoke("new", self.ledger)
+        else:
+            shutil.copyfile(like.ledger, self.ledger)
 
     def run(self, *args, status=0):
         """Run one command on the ledger."""
@@ -124,7 +131,9 @@ class Desk:
         """Return the listed calls by ref, settled first where a day is given."""
         if as_of is not None:
             self.settle(as_of)
-        return {row["ref"]: row for row in csv_rows(self.run("calls", "--format", "csv").stdout)}
+        return {
+            row["ref"]: row for row in csv_rows(self.run("calls", "--format", "csv").stdout)
+        }
 
     def scores(self, by="forecaster"):
         """Return the rows of scores."""

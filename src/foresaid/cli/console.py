@@ -15,6 +15,8 @@ if TYPE_CHECKING:
 
     from foresaid.model.issues import Issue
 
+CONTROL: dict[int, str] = dict.fromkeys((*range(32), *range(127, 160)), "\ufffd")
+CONTROL |= {ord("\n"): "\n", ord("\t"): "\t"}
 PIPE_WIDTH = 120
 SHOWN_ISSUES = 1_000
 
@@ -37,8 +39,8 @@ def console(*, stderr: bool = False) -> Console:
 
 
 def say(text: str) -> None:
-    """Tell the user something that is not data."""
-    console(stderr=True).print(text, soft_wrap=True)
+    """Tell the user something that is not data; no control character reaches the screen."""
+    console(stderr=True).print(text.translate(CONTROL), soft_wrap=True)
 
 
 def write(text: str) -> None:

@@ -201,6 +201,26 @@ def decide(
     say(f"{ref}: {condition}: {answer.value}. Next: foresaid settle")
 
 
+def withdraw(
+    ref: Annotated[str, typer.Argument(metavar="REF", help="The call's ref.")],
+    ledger: LedgerPath,
+    at: Annotated[str, typer.Option("--at", help="When it was withdrawn.")],
+    why: Annotated[str, typer.Option("--why", help="The reason given.")],
+    who: Annotated[str, typer.Option("--who", help="Who keeps the record of it.")] = "",
+) -> None:
+    """Mark a call as withdrawn; it stays, still settles, and is told apart in scores.
+
+    Example: foresaid withdraw C-0412 --at 2025-03-14 --why "Said on air to be a slip"
+    """
+    from foresaid.ledger.store import Ledger
+    from foresaid.pipeline.withdrawing import WithdrawalRequest, withdraw_call
+
+    request = WithdrawalRequest(ref, at, who, why, today=today(), at=now())
+    with Ledger.open(ledger) as opened:
+        withdraw_call(opened, request)
+    say(f"{ref}: marked as withdrawn. It still settles.")
+
+
 def _show_settled(done: Settled, form: Format) -> None:
     from foresaid.cli.console import console, give_out
     from foresaid.report.tables import Column, make_table
@@ -270,4 +290,5 @@ def add_to(app: typer.Typer) -> None:
     app.command("new")(new)
     app.command("import")(import_)
     app.command("decide")(decide)
+    app.command("withdraw")(withdraw)
     app.command("settle")(settle)

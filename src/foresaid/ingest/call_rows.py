@@ -43,6 +43,8 @@ OPTIONAL = (
     "coded_at", "revises", "copy_of", "note",
 )  # fmt: skip
 LONGEST_REF = 200
+TEXTS = ("currency", "quote", "outlet", "link", "collection", "coder", "note")
+LAYOUT = dict.fromkeys(map(ord, "\n\r\t\u2028\u2029"))
 
 
 @dataclass(frozen=True)
@@ -98,6 +100,8 @@ class CallRow(RowReader):
             self._other("copy_of", forecaster),
             self._other("revises", forecaster),
         )
+        for column in TEXTS:
+            self.check_text(column, self.cell(column).translate(LAYOUT), limit=None)
         if self.issues or claim is None or said is None or said_on is None:
             return None
         return CodedCall(
@@ -210,7 +214,7 @@ class CallRow(RowReader):
 
     def _said(self, instrument: Instrument | None) -> tuple[SaidAt | None, date | None]:
         """Return when it was said, and the date in the venue's zone."""
-        said = parse_said_at(self.cell("said_at"))
+        said = parse_said_at(self.cell("said_at"), order=self.context.order)
         if isinstance(said, CellFault):
             self._cell_fault("said_at", said)
             return None, None
@@ -311,7 +315,7 @@ class CallRow(RowReader):
         coded: Any = (
             parse_date(text, order=self.context.order)
             if len(text) <= 10
-            else (parse_said_at(text))
+            else parse_said_at(text, order=self.context.order)
         )
         if isinstance(coded, CellFault):
             self._cell_fault("coded_at", coded)

@@ -10,6 +10,8 @@ from foresaid.model.issues import Issue, clip
 from foresaid.model.records import CodedCall, Parsed
 
 if TYPE_CHECKING:
+    from collections.abc import Collection
+
     from foresaid.ingest.tables import RawTable
 
 __all__ = ["OPTIONAL", "REQUIRED", "CallContext", "parse_calls"]
@@ -46,13 +48,18 @@ def parse_calls(table: RawTable, context: CallContext) -> Parsed[CodedCall]:
             rows.append(row)
             lines.append(line)
     order, dangling = _referred_first(rows, set(context.owners))
-    for at in dangling:
-        row, line = rows[at], lines[at]
-        other = row.copy_of or row.revises
-        message = f"`{clip(other)}`, which this row names, is not to be had"
-        hint = "It has a fault of its own, or the two name each other."
-        issues.append(Issue("bad-ref", message, table.file, line, "ref", clip(row.ref), hint))
+    had = {rows[at].ref for at in order} | set(context.owners)
+    issues += [_dangling(table.file, rows[at], lines[at], had) for at in dangling]
     return Parsed(tuple(rows[i] for i in order), tuple(lines[i] for i in order), tuple(issues))
+
+
+def _dangling(file: str, row: CodedCall, line: int, had: Collection[str]) -> Issue:
+    """Return the issue of a row that names a row which cannot be imported before it."""
+    column = "revises" if not row.copy_of or row.copy_of in had else "copy_of"
+    other = clip(getattr(row, column))
+    message = f"`{other}` cannot be imported before this row, which names it"
+    hint = "Mend the faults of that row; no two rows may name each other, not even in a circle."
+    return Issue("bad-ref", message, file, line, column, other, hint)
 
 
 def _referred_first(rows: list[CodedCall], known: set[str]) -> tuple[list[int], list[int]]:

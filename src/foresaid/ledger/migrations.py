@@ -185,7 +185,7 @@ CREATE TABLE reading (
 
 CREATE TABLE withdrawal (
   id INTEGER PRIMARY KEY,
-  statement INTEGER NOT NULL REFERENCES statement,
+  statement INTEGER NOT NULL UNIQUE REFERENCES statement,
   withdrawn_at TEXT NOT NULL,
   who TEXT NOT NULL,
   why TEXT NOT NULL

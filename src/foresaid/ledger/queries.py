@@ -27,13 +27,16 @@ SELECT c.id AS call, s.ref, f.handle AS forecaster, coalesce(i.symbol, '') AS in
        c.probability_high, c.likelihood, c.given, c.currency, c.horizon_class,
        c.specificity_class, s.outlet, s.link, s.quote, coalesce(g.name, '') AS collection,
        c.coder, c.coded_at, coalesce(r.ref, '') AS revises,
-       (SELECT count(*) FROM statement o WHERE o.copy_of = s.id) AS copies, c.note
+       (SELECT count(*) FROM statement o WHERE o.copy_of = s.id) AS copies,
+       coalesce(w.withdrawn_at, '') AS withdrawn_at,
+       coalesce(w.why, '') AS withdrawn_why, c.note
 FROM call c
 JOIN statement s ON s.id = c.statement
 JOIN forecaster f ON f.id = s.forecaster
 LEFT JOIN instrument i ON i.id = c.instrument
 LEFT JOIN collection g ON g.id = s.collection
 LEFT JOIN statement r ON r.id = c.revises
+LEFT JOIN withdrawal w ON w.statement = s.id
 ORDER BY c.id
 """
 

@@ -149,6 +149,12 @@ def add_decision(ledger: Ledger, row: Mapping[str, Any], *, at: str) -> None:
     ledger.insert("decision", dict(row))
 
 
+def add_withdrawal(ledger: Ledger, ref: str, row: Mapping[str, Any], *, at: str) -> None:
+    """Add a withdrawal: withdrawn_at, who, why."""
+    ledger.record("withdraw", {"ref": ref, **row}, at=at)
+    ledger.insert("withdrawal", {"statement": statement_id(ledger, ref), **row})
+
+
 def add_settlement(
     ledger: Ledger, header: Mapping[str, Any], outcomes: Sequence[tuple[Any, ...]]
 ) -> int:

@@ -23,7 +23,7 @@ if TYPE_CHECKING:
     from foresaid.ingest.tables import RawTable
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
-    from foresaid.model.records import SeriesKind
+    from foresaid.model.records import Forecaster, SeriesKind
 
 What = Literal["instruments", "prices", "actions", "forecasters", "calls"]
 
@@ -70,10 +70,14 @@ class Job:
 
 
 def _fresh(
-    rows: Sequence[Any], lines: Sequence[int], known: dict[str, Any], key: str, file: str
+    rows: Sequence[Any], lines: Sequence[int], known: dict[str, Any], key: str, job: Job
 ) -> tuple[list[Any], list[Issue]]:
-    """Return the rows the ledger lacks; a row that differs from the known one is a fault."""
+    """Return the rows the ledger lacks; a row that differs from the known one is a fault.
+
+    ``key`` is the field of a row that names it; its column is called after what is imported.
+    """
     fresh, issues = [], []
+    file, column = job.table.file, job.request.what.removesuffix("s")
     for row, line in zip(rows, lines, strict=True):
         name = getattr(row, key)
         if name not in known:
@@ -81,7 +85,9 @@ def _fresh(
         elif known[name] != row:
             message = f"`{clip(name)}` is in the ledger with other details"
             hint = "The ledger only grows: give it another name, or leave the row out."
-            issues.append(Issue("known-otherwise", message, file, line, key, clip(name), hint))
+            issues.append(
+                Issue("known-otherwise", message, file, line, column, clip(name), hint)
+            )
     return fresh, issues
 
 
@@ -92,7 +98,7 @@ def _instruments(job: Job) -> Batch:
         known=queries.instruments(job.ledger),
     )
     known = {symbol: one for symbol, (_, one) in queries.instruments(job.ledger).items()}
-    fresh, issues = _fresh(parsed.rows, parsed.lines, known, "symbol", job.table.file)
+    fresh, issues = _fresh(parsed.rows, parsed.lines, known, "symbol", job)
     return Batch(
         len(fresh),
         len(parsed.rows) - len(fresh) - len(issues),
@@ -106,21 +112,51 @@ def _forecasters(job: Job) -> Batch:
     parsed = parse_forecasters(job.table)
     held = queries.forecasters(job.ledger)
     known = {handle: one for handle, (_, one) in held.items()}
-    fresh, issues = _fresh(parsed.rows, parsed.lines, known, "handle", job.table.file)
+    fresh, issues = _fresh(parsed.rows, parsed.lines, known, "handle", job)
+    n_known = len(parsed.rows) - len(fresh) - len(issues)
+    lines = dict(zip((one.handle for one in parsed.rows), parsed.lines, strict=True))
+    taken = _taken_names(fresh, known, lines, job.table.file)
+    bad_lines = {issue.line for issue in taken}
+    fresh = [one for one in fresh if lines[one.handle] not in bad_lines]
     return Batch(
         len(fresh),
-        len(parsed.rows) - len(fresh) - len(issues),
-        (*parsed.issues, *issues),
+        n_known,
+        (*parsed.issues, *issues, *taken),
         parsed.remarks,
         lambda load: writes.add_forecasters(job.ledger, fresh, load),
     )
 
 
+def _taken_names(
+    fresh: Sequence[Forecaster],
+    known: dict[str, Forecaster],
+    lines: dict[str, int],
+    file: str,
+) -> list[Issue]:
+    """Return the handles and aliases of new forecasters that stand for one in the ledger."""
+    owners = {alias: one.handle for one in known.values() for alias in one.aliases}
+    owners |= {handle: handle for handle in known}
+    hint = "A handle or alias belongs to one forecaster: write another, or take it out."
+    return [
+        Issue(
+            "double-alias",
+            f"`{clip(name)}` stands for `{clip(owners[name])}` in the ledger already",
+            file,
+            lines[one.handle],
+            column,
+            clip(name),
+            hint,
+        )
+        for one in fresh
+        for column, names in (("forecaster", (one.handle,)), ("aliases", one.aliases))
+        for name in names
+        if name in owners
+    ]
+
+
 def _actions(job: Job) -> Batch:
     instruments = queries.instruments(job.ledger)
-    parsed = parse_actions(
-        job.table, known={name: one for name, (_, one) in instruments.items()}
-    )
+    parsed = parse_actions(job.table, known=instruments, dates=job.request.dates)
     held = queries.actions(job.ledger, vintage=queries.vintage(job.ledger))
     known = {(one.instrument, one.effective, one.kind): one for one in held}
     fresh, issues = [], []
@@ -157,7 +193,8 @@ def _prices(job: Job) -> Batch:
         dates=job.request.dates,
     )
     ids = {symbol: key for symbol, (key, _) in instruments.items()}
-    numbers = np.array([ids[str(symbol)] for symbol in parsed.symbols], dtype=np.int64)
+    # a name that is not known has no rows left
+    numbers = np.array([ids.get(symbol, -1) for symbol in parsed.symbols], dtype=np.int64)
     numbers = numbers[parsed.instrument] if len(numbers) else numbers
     mixed = _mixed_series(job, parsed)
     fresh = _unlike_known(job.ledger, numbers, parsed)

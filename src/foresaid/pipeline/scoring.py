@@ -141,7 +141,7 @@ def score_columns_of(by: Sequence[str]) -> list[str]:
 
 _COUNTS = (
     "screened", "not_a_call", "open", "void", "early", "imputed_n", "imputed_hits",
-    "imputed_expected_hits",
+    "imputed_expected_hits", "withdrawn_n", "withdrawn_hits", "withdrawn_expected_hits",
 )  # fmt: skip
 
 
@@ -172,19 +172,27 @@ def _is_scored(group: pd.DataFrame) -> pd.Series:
 def _counts(group: pd.DataFrame) -> dict[str, Any]:
     scored, result = _is_scored(group), group["result"]
     imputed = scored & (group["horizon_imputed"] == 1)
-    beside = _record(group[imputed])
-    known = np.isfinite(beside.chance)
+    withdrawn = scored & ~imputed & (group["withdrawn_at"] != "")
     return {
         "screened": len(group),
         "not_a_call": int((result == NOT_A_CALL).sum()),
         "open": int((result == "open").sum()),
         "void": int((result == "void").sum()),
         "early": int((result.isin(["hit", "miss"]) & ~scored).sum()),
-        "imputed_n": int(imputed.sum()),
-        "imputed_hits": int(beside.right.sum()),
-        "imputed_expected_hits": float(beside.chance_right[known].sum())
-        if known.any()
-        else None,
+        **_beside(group[imputed], "imputed"),
+        **_beside(group[withdrawn], "withdrawn"),
+    }
+
+
+def _beside(rows: pd.DataFrame, name: str) -> dict[str, Any]:
+    """Return how many calls of a part of the group came right, and how many by chance."""
+    part = _record(rows)
+    known = np.isfinite(part.chance)
+    expected = float(part.chance_right[known].sum()) if known.any() else None
+    return {
+        f"{name}_n": len(rows),
+        f"{name}_hits": int(part.right.sum()),
+        f"{name}_expected_hits": expected,
     }
 
 

@@ -132,6 +132,7 @@ class _Teller:
             ("result", self._result()),
             ("chance", self._chance()),
             ("flags", row["flags"] or "none"),
+            ("withdrawn", self._withdrawn()),
             (
                 "settled",
                 f"as of {self.settlement.as_of}, price vintage "
@@ -158,6 +159,15 @@ class _Teller:
             if source:
                 found.append({"use": uses} | source)
         return found
+
+    def _withdrawn(self) -> str:
+        row = self.row
+        if not row["withdrawn_at"]:
+            return ""
+        return (
+            f"on {row['withdrawn_at']} ({row['withdrawn_why']}); it is still settled, and "
+            "scores say how many of their calls were withdrawn"
+        )
 
     def _condition(self) -> str:
         if not self.row["given"]:

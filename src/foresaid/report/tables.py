@@ -102,6 +102,10 @@ def _imputed(row: dict[str, Any]) -> str:
     return f"{row['imputed_hits']} of {row['imputed_n']}" if row["imputed_n"] else "–"
 
 
+def _withdrawn(row: dict[str, Any]) -> str:
+    return f"{row['withdrawn_hits']} of {row['withdrawn_n']}" if row["withdrawn_n"] else "–"
+
+
 def _text(name: str) -> Callable[[dict[str, Any]], str]:
     """Return what shows a cell as text, a dash where it is empty or nought."""
     return lambda row: str(row[name] or "–")
@@ -137,6 +141,7 @@ def beside_columns(keys: Sequence[str]) -> list[Column]:
         Column("void", _text("void")),
         Column("early", _text("early")),
         Column("undated right", _imputed),
+        Column("withdrawn right", _withdrawn),
         Column("stated", _text("n_probability")),
         Column("Brier", lambda row: decimal(row["brier"])),
         Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),
@@ -145,7 +150,15 @@ def beside_columns(keys: Sequence[str]) -> list[Column]:
 
 def has_something_beside(row: dict[str, Any]) -> bool:
     """Return whether a group has anything but matured calls without probabilities."""
-    names = ("not_a_call", "open", "void", "early", "imputed_n", "n_probability")
+    names = (
+        "not_a_call",
+        "open",
+        "void",
+        "early",
+        "imputed_n",
+        "withdrawn_n",
+        "n_probability",
+    )
     return any(row[name] for name in names)
 
 
@@ -156,8 +169,8 @@ SCORE_GUIDE = (
 )
 BESIDE_GUIDE = (
     "Outside the rates: open and void calls, calls settled early whose date has not come, and "
-    "calls without a stated date. stated: calls with a probability. Brier: mean squared "
-    "distance of stated probabilities and outcomes, 0 is "
+    "calls without a stated date. Withdrawn calls count in the rates. stated: calls with a "
+    "probability. Brier: mean squared distance of stated probabilities and outcomes, 0 is "
     "best; skill: how much of the Brier score of chance is saved."
 )
 

@@ -2,7 +2,7 @@ import pytest
 
 from foresaid.report.traces import trace_rows, trace_text
 
-CALL = {"ref": "C-1", "result": "miss"}
+CALL = {"ref": "C-1", "outcome": "miss"}
 STEPS = [
     ("statement", "ada, 2025-03-14: " + "a long line of words " * 12),
     ("result", "miss"),
