@@ -83,7 +83,7 @@ def test_a_mark_windows_line_ends_and_semicolons_are_taken(tmp_path, what):
     text = FILES[what].replace(";", "/").replace(",", ";").replace("\n", "\r\n")
     done = desk.bring(what, b"\xef\xbb\xbf" + text.encode(), name="odd.csv")
     assert "delimiter: semicolon" in done.stderr
-    assert f"{what} rows added" in done.stderr
+    assert f"of {what} added" in done.stderr
 
 
 def test_a_missing_file_and_a_folder(desk, tmp_path):
@@ -202,7 +202,7 @@ def test_faults_of_price_cells(desk, text, place, words):
 
 def test_a_yield_may_be_negative_and_an_index_may_not(desk):
     done = desk.bring("prices", price("ORY10", "2025-03-17", "-0.25"), name="y.csv")
-    assert "1 prices rows added" in done.stderr
+    assert "1 row of prices added" in done.stderr
 
 
 def test_a_session_that_stands_twice(desk):
@@ -212,7 +212,7 @@ def test_a_session_that_stands_twice(desk):
     same = [rows[0], rows[0]]
     done = desk.bring("prices", table_text("instrument,session,close", same), name="s.csv")
     assert "the row repeats line 2 and is passed over" in done.stderr
-    assert "1 prices rows added" in done.stderr
+    assert "1 row of prices added" in done.stderr
 
 
 def test_a_decimal_comma_is_taken_where_it_cannot_be_mistaken(desk):
@@ -504,7 +504,7 @@ def test_nothing_settled_and_nothing_there(tmp_path):
     assert "Nothing is settled yet" in desk.run("calls").stderr
     assert desk.outcomes("2025-03-17") == {}
     assert desk.scores() == []
-    assert desk.run("score").stdout
+    assert "There is no call to score yet" in desk.run("score").stderr
     assert desk.scores("all")[0]["verdict"] == "too few to tell"
     desk.stock(prices=False).calls(GOOD_CALL)
     row = desk.outcomes("2025-03-17")["C1"]

@@ -290,8 +290,9 @@ def kind_of(claim):
 def test_a_trace_for_each_kind_of_claim(ledger, calls, price_rows):
     chosen = {}
     for row in calls:
-        chosen.setdefault((kind_of(row["claim"]), row["outcome"]), row)
-    assert len({kind for kind, _ in chosen}) > 5
+        chosen.setdefault(kind_of(row["claim"]), row)
+        chosen.setdefault(row["outcome"], row)
+    assert len(chosen) > 10
     for row in chosen.values():
         ref = row["ref"]
         text = invoke("trace", ref, "--ledger", ledger).stdout

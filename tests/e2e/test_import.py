@@ -77,7 +77,7 @@ def closes(desk, symbol="ORVA"):
 def test_five_files_one_after_the_other(empty):
     for what, (text, rows) in FILES.items():
         done = empty.bring(what, text)
-        assert f"{what}.csv: {rows} {what} rows added." in done.stderr
+        assert f"{what}.csv: {rows} rows of {what} added." in done.stderr
         assert done.stdout == ""
     empty.settle()
     assert {row["outcome"] for row in empty.outcomes().values()} <= {"hit", "miss", "open"}
@@ -89,7 +89,7 @@ def test_the_same_files_again_add_nothing_and_say_so(empty):
     before = empty.dump()
     for what, (text, rows) in FILES.items():
         done = empty.bring(what, text)
-        assert f"{what}.csv: nothing to add, all {rows} rows are already in" in done.stderr
+        assert f"{what}.csv: nothing to add, {rows} rows already in" in done.stderr
     assert empty.dump() == before
 
 
@@ -97,23 +97,23 @@ def test_a_longer_file_adds_only_what_is_new(desk):
     more = CALLS + "C4,o.quist,2025-03-05,ORVA,ends lower,1 week,,\n"
     desk.bring("calls", CALLS)
     done = desk.bring("calls", more)
-    assert "1 calls rows added, 3 already in the ledger" in done.stderr
+    assert "1 row of calls added, 3 already in the ledger" in done.stderr
     done = desk.bring("forecasters", FORECASTERS + "v.lenz,,,,\n")
-    assert "1 forecasters rows added, 2 already" in done.stderr
+    assert "1 row of forecasters added, 2 already" in done.stderr
     assert count(desk.ledger, "call") == 4
 
 
 def test_a_dry_run_changes_nothing_and_says_what_would_happen(bare):
     before, size = bare.dump(), bare.ledger.stat().st_size
     done = bare.bring("prices", prices_text(), "--dry-run")
-    assert "10 prices rows would be added" in done.stderr
+    assert "10 rows of prices would be added" in done.stderr
     bare.bring("calls", CALLS, "--dry-run")
     done = bare.bring("calls", CALLS.replace("ends higher", "goes up"), "--dry-run", status=5)
     assert "would be refused" in done.stderr
     done = bare.bring(
         "calls", CALLS.replace("ends higher", "goes up"), "--dry-run", "--keep-good"
     )
-    assert "2 calls rows would be added, 1 rejected" in done.stderr
+    assert "2 rows of calls would be added, 1 rejected" in done.stderr
     assert not list(bare.folder.glob("*.rejects*"))
     assert (bare.dump(), bare.ledger.stat().st_size) == (before, size)
 
@@ -122,7 +122,7 @@ def test_several_files_at_once_and_the_first_bad_one_stops(bare):
     good = bare.file("a.csv", prices_text())
     bad = bare.file("b.csv", "instrument,session,close\nORVA,2025-03-17,nought\n")
     done = bare.run("import", "prices", good, bad, status=3)
-    assert "a.csv: 10 prices rows added" in done.stderr
+    assert "a.csv: 10 rows of prices added" in done.stderr
     assert "b.csv was refused; nothing was imported" in done.stderr
     assert count(bare.ledger, "price") == 10
 
@@ -145,7 +145,7 @@ def test_prices_of_one_instrument_in_a_file(bare):
 
 def test_prices_with_a_column_for_each_instrument(bare):
     done = bare.bring("prices", WIDE)
-    assert "15 prices rows added" in done.stderr
+    assert "15 rows of prices added" in done.stderr
     assert [day for day, *_ in closes(bare, "NELT")] == list(SESSIONS[1::2])
 
 
@@ -180,13 +180,13 @@ def test_a_corrected_file_stores_the_rows_that_differ_beside_the_old_ones(desk):
     first = closes(desk)
     rows = prices_text().replace("2025-03-07,107,103,104", "2025-03-07,107,103,103.5")
     done = desk.bring("prices", rows, name="corrected.csv")
-    assert "1 prices rows added, 9 already in the ledger" in done.stderr
+    assert "1 row of prices added, 9 already in the ledger" in done.stderr
     after = closes(desk)
     assert after[:10] == first
     assert [row[:2] for row in after[10:]] == [("2025-03-07", 103.5)]
     # the old numbers again: what counts now is the newest row, so they are a new one
     done = desk.bring("prices", prices_text(), name="back.csv")
-    assert "1 prices rows added, 9 already" in done.stderr
+    assert "1 row of prices added, 9 already" in done.stderr
     assert len(closes(desk)) == 12
 
 
@@ -200,7 +200,7 @@ def test_one_instrument_has_one_kind_of_series(desk):
 def test_rejected_rows_mended_in_their_file_come_in(desk):
     text = CALLS.replace("touches 107", "touchs 107").replace("3 sessions", "3 session s")
     done = desk.bring("calls", text, "--keep-good")
-    assert "1 calls rows added, 2 rejected" in done.stderr
+    assert "1 row of calls added, 2 rejected" in done.stderr
     rejects = desk.folder / "calls.rejects.csv"
     assert str(rejects) in done.stderr
     rows = csv_rows(rejects.read_text("utf-8"))
@@ -211,7 +211,7 @@ def test_rejected_rows_mended_in_their_file_come_in(desk):
     mended = rejects.read_text("utf-8").replace("touchs", "touches").replace("n s", "ns")
     rejects.write_text(mended, encoding="utf-8")
     done = desk.run("import", "calls", rejects)
-    assert "2 calls rows added" in done.stderr
+    assert "2 rows of calls added" in done.stderr
     assert count(desk.ledger, "call") == 3
 
 
@@ -287,7 +287,7 @@ def test_a_reference_to_a_rejected_row_is_rejected_with_it(desk):
     text = refs(("A1", "", ""), ("A2", "A1", ""), ("A3", "", ""))
     text = text.replace("ends higher", "goes higher", 1)
     done = desk.bring("calls", text, "--keep-good")
-    assert "1 calls rows added, 2 rejected" in done.stderr
+    assert "1 row of calls added, 2 rejected" in done.stderr
     rejects = csv_rows((desk.folder / "calls.rejects.csv").read_text("utf-8"))
     assert [row["ref"] for row in rejects] == ["A1", "A2"]
     assert rejects[1]["why"].startswith("copy_of: `A1`")

@@ -41,7 +41,7 @@ def test_a_corrected_price_changes_a_result_and_says_so(tmp_path):
     assert outcome() == "hit"
     rows[-1] = "AAA,2024-01-03,101.5"
     done = bring("prices", "second.csv", "\n".join(["instrument,session,close", *rows]) + "\n")
-    assert "1 prices rows added, 2 already in the ledger" in done.stderr
+    assert "1 row of prices added, 2 already in the ledger" in done.stderr
     changed = run("settle", "--as-of", "2024-01-10", "--changes", "--format", "csv")
     assert list(csv.DictReader(io.StringIO(changed.stdout))) == [
         {"ref": "C1", "before": "hit", "after": "miss", "because": "other prices or actions"}

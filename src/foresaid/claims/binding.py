@@ -82,7 +82,9 @@ def _mark(
     if mark.role in ("gain", "loss"):
         return here + size if mark.role == "gain" else here - size
     change = size if mark.role == "gain of thing" else -size
-    return np.where(additive, -change, 1.0 / (1.0 + np.where(additive, 0.0, change)))
+    # a size in points is one of the quote, a percentage one of the thing it prices
+    in_quote = additive | (units[:, mark.quantity] == UNIT_CODES["pt"])
+    return np.where(in_quote, here - change, 1.0 / (1.0 + np.where(in_quote, 0.0, change)))
 
 
 def _size(

@@ -150,7 +150,9 @@ def unit_faults(
                     "Write a level above zero.",
                 )
         elif quantity.unit not in _units_allowed(claim, instrument_kind):
-            return _wrong_unit(quantity, kind_name, _units_allowed(claim, instrument_kind))
+            return _wrong_unit(
+                claim, quantity, kind_name, _units_allowed(claim, instrument_kind)
+            )
     return None
 
 
@@ -159,7 +161,9 @@ def _units_allowed(claim: Claim, instrument_kind: InstrumentKind) -> tuple[str, 
     return tuple(unit for unit in instrument_kind.units if unit not in barred)
 
 
-def _wrong_unit(quantity: Quantity, kind_name: str, units: tuple[str, ...]) -> PhraseError:
+def _wrong_unit(
+    claim: Claim, quantity: Quantity, kind_name: str, units: tuple[str, ...]
+) -> PhraseError:
     number = print_number(quantity.value)
     if quantity.unit == "%" and "pp" in units:
         return PhraseError(
@@ -170,6 +174,10 @@ def _wrong_unit(quantity: Quantity, kind_name: str, units: tuple[str, ...]) -> P
             f"`{print_number(round(4.0 * quantity.value, 9))}bp`.",
         )
     allowed = " or ".join(f"`{number}{unit}`" for unit in units)
+    if quantity.unit in KINDS[claim.kind].units_barred:
+        return PhraseError(
+            f"`{claim.kind}` has no size in `{quantity.unit}`", f"Write {allowed}."
+        )
     return PhraseError(
         f"{_with_article(kind_name)} does not move in `{quantity.unit}`", f"Write {allowed}."
     )

@@ -12,6 +12,8 @@ from foresaid.claims.kernels import Judged, Kernel, Unfit
 if TYPE_CHECKING:
     from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray, Windows
 
+NO_RETURN = "quotes compared by difference have no return"
+
 
 @dataclass(frozen=True)
 class RelativeKernel(Kernel):
@@ -61,7 +63,7 @@ class RelativeKernel(Kernel):
             _, _, is_beyond = calendar.look_up(bars.day[windows.last])
             behind |= real & is_beyond
         return [
-            Unfit(windows.additive, "quotes compared by difference have no return"),
+            Unfit(windows.additive, NO_RETURN),
             Unfit(before, "no price of a compared instrument at the reference"),
             Unfit(behind, "no price of a compared instrument at the deadline", "open"),
         ]

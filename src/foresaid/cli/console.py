@@ -43,6 +43,17 @@ def say(text: str) -> None:
     console(stderr=True).print(text.translate(CONTROL), soft_wrap=True)
 
 
+def counted(number: int, noun: str) -> str:
+    """Return a number with its noun, in the plural where it is not one.
+
+    Examples
+    --------
+    >>> counted(1, "row"), counted(2, "row")
+    ('1 row', '2 rows')
+    """
+    return f"{number} {noun}" + ("" if number == 1 else "s")
+
+
 def write(text: str) -> None:
     """Give out data, exactly as it is."""
     sys.stdout.write(text if text.endswith("\n") else text + "\n")

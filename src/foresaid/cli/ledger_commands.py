@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from foresaid.cli.console import Format, file_progress, say, show_issues, write
+from foresaid.cli.console import Format, counted, file_progress, say, show_issues, write
 from foresaid.cli.options import CodebookPath, LedgerPath, OutputFormat, now, read_day, today
 
 if TYPE_CHECKING:
@@ -77,11 +77,11 @@ def import_(
         typer.Option("--keep-good", help="Import good rows, write the rest to a reject file."),
     ] = False,
 ) -> None:
-    """Add files to the ledger: instruments, prices, actions, forecasters, calls.
+    """Add the rows of files to the ledger.
 
-    A file with a fault is refused as a whole, with every fault listed. Importing the same
-    file again adds nothing. Bring instruments first, then prices, actions, forecasters and
-    calls.
+    A file holds instruments, prices, actions, forecasters or calls; bring them in this
+    order. A file with a fault is refused as a whole, with every fault listed. Importing the
+    same file again adds nothing.
 
     Example: foresaid import calls calls.csv --ledger desk.foresaid
     """
@@ -114,13 +114,14 @@ def _tell_import(what: What, path: Path, done: Imported, *, dry_run: bool) -> No
         say(f"{path.name}: {remark}")
     show_issues(done.issues)
     verb = "would be added" if dry_run else "added"
-    text = f"{path.name}: {done.added} {what} rows {verb}"
+    text = f"{path.name}: {counted(done.added, 'row')} of {what} {verb}"
     if done.known:
         text += f", {done.known} already in the ledger"
     if done.rejected:
         text += f", {done.rejected} rejected"
     if not done.added and not done.rejected and done.known:
-        text = f"{path.name}: nothing to add, all {done.known} rows are already in the ledger"
+        what_is_known = f"{counted(done.known, 'row')} already in the ledger"
+        text = f"{path.name}: nothing to add, {what_is_known}"
     say(text + ".")
     if done.reject_file is not None:
         say(f"Rejected rows are in {done.reject_file}; mend them there and import it.")
@@ -161,7 +162,7 @@ def settle(
     else:
         _show_settled(done, format_)
         if done.changes:
-            say(f"{len(done.changes)} results differ from the run before; see --changes.")
+            say(f"Changed since the run before: {counted(len(done.changes), 'result')}.")
 
 
 class Answer(StrEnum):
@@ -183,7 +184,7 @@ def decide(
     evidence: Annotated[str, typer.Option("--evidence", help="How anyone can check it.")],
     who: Annotated[str, typer.Option("--who", help="Who decided.")] = "",
 ) -> None:
-    """Decide whether the plain fact on which a call depends has come true.
+    """Say whether the plain fact on which a call depends came true.
 
     The call's clock starts at that time. A later decision about the same call stands in for
     an earlier one; both stay in the ledger.
@@ -208,7 +209,9 @@ def withdraw(
     why: Annotated[str, typer.Option("--why", help="The reason given.")],
     who: Annotated[str, typer.Option("--who", help="Who keeps the record of it.")] = "",
 ) -> None:
-    """Mark a call as withdrawn; it stays, still settles, and is told apart in scores.
+    """Mark a call as withdrawn; it stays, and is settled all the same.
+
+    Scores tell how many calls of a group were withdrawn.
 
     Example: foresaid withdraw C-0412 --at 2025-03-14 --why "Said on air to be a slip"
     """
@@ -249,7 +252,7 @@ def _show_changes(done: Settled, form: Format) -> None:
         return
     screen = console()
     screen.print(make_table(change_columns(), done.changes, width=screen.width))
-    say(f"{len(done.changes)} results differ from the run before.")
+    say(f"Changed since the run before: {counted(len(done.changes), 'result')}.")
 
 
 def demo(
@@ -261,7 +264,7 @@ def demo(
     ] = None,
     format_: OutputFormat = Format.table,
 ) -> None:
-    """Build a demo ledger from an invented desk, settle it and score it.
+    """Build, settle and score a demo ledger of an invented desk.
 
     Everyone and everything in it is invented; the prices are simulated.
 

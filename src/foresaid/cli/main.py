@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import os
 import sys
 from typing import Annotated, Any
@@ -79,5 +80,8 @@ score_commands.add_to(app)
 
 
 def main() -> None:
-    """Run the program."""
+    """Run the program; what it writes is UTF-8 whatever the locale says."""
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, io.TextIOWrapper):
+            stream.reconfigure(encoding="utf-8", errors="backslashreplace")
     app()

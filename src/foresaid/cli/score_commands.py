@@ -7,7 +7,7 @@ from typing import Annotated
 
 import typer
 
-from foresaid.cli.console import Format, console, give_out, say, write
+from foresaid.cli.console import Format, console, counted, give_out, say, write
 from foresaid.cli.options import LedgerPath, OutputFormat
 
 NOTHING_SETTLED = "Nothing is settled yet, so outcomes are empty. Run: foresaid settle"
@@ -45,7 +45,7 @@ def calls(
         return
     screen = console()
     screen.print(make_table(call_columns(), rows, width=screen.width))
-    say(f"{len(rows)} calls.")
+    say(f"{counted(len(rows), 'call')}.")
 
 
 def trace(
@@ -53,7 +53,7 @@ def trace(
     ledger: LedgerPath,
     format_: OutputFormat = Format.table,
 ) -> None:
-    """Show how one call was settled, step by step, to be redone by hand.
+    """Show step by step how one call was settled.
 
     Example: foresaid trace C-0412 --ledger desk.foresaid
     """
@@ -89,7 +89,9 @@ def score(
     ] = False,
     format_: OutputFormat = Format.table,
 ) -> None:
-    """Score the settled calls by forecaster and class, against a coin and the base rate.
+    """Score the settled calls against a coin and the base rate.
+
+    The base rate is how often the same words came true in the market's own past.
 
     Example: foresaid score --ledger desk.foresaid --by forecaster,horizon
     """
@@ -109,6 +111,9 @@ def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) 
     _tell_stale(scores.stale)
     if form is not Format.table:
         give_out(scores.rows, score_columns_of(keys), form)
+        return
+    if not scores.rows:
+        say("There is no call to score yet.")
         return
     screen = console()
     shown = tables.score_columns(keys, has_weights=weighted)

@@ -74,8 +74,24 @@ def import_file(
     CheckFailed
         The same on a dry run.
     """
-    table = read_table(request.path, progress=progress)
-    batch = BATCHES[request.what](Job(ledger, table, request, codebook))
+    job = Job(ledger, read_table(request.path, progress=progress), request, codebook)
+    if request.dry_run:
+        return _examined(job)[0]
+    with ledger.writing():  # nobody else writes between the comparison and the addition
+        result, batch, rejected = _examined(job)
+        if rejected:
+            reject_file = write_rejects(request.path, job.table, rejected)
+            result = replace(result, reject_file=reject_file)
+        if batch.added:
+            writes.add_codebook(ledger, codebook, at=request.at)
+            batch.write(writes.add_load(ledger, _load_row(request, job.table, batch)))
+    return result
+
+
+def _examined(job: Job) -> tuple[Imported, Batch, dict[int, list[Issue]]]:
+    """Return what a file would add to the ledger, and its rejected rows; or refuse it."""
+    table, request = job.table, job.request
+    batch = BATCHES[request.what](job)
     issues = (*table.issues, *batch.issues)
     rejected = rejected_lines(table, batch.issues, batch.bad_lines)
     has_errors = any(issue.severity == "error" for issue in issues)
@@ -85,16 +101,7 @@ def import_file(
             raise CheckFailed(f"{request.path} would be refused.", issues)
         raise InputRejected(f"{request.path} was refused; nothing was imported.", issues)
     remarks = tuple(dict.fromkeys((*table.remarks, *batch.remarks)))
-    result = Imported(batch.added, batch.known, len(rejected), issues, remarks)
-    if request.dry_run:
-        return result
-    if rejected:
-        result = replace(result, reject_file=write_rejects(request.path, table, rejected))
-    if batch.added:
-        with ledger.writing():
-            writes.add_codebook(ledger, codebook, at=request.at)
-            batch.write(writes.add_load(ledger, _load_row(request, table, batch)))
-    return result
+    return Imported(batch.added, batch.known, len(rejected), issues, remarks), batch, rejected
 
 
 def _load_row(request: ImportRequest, table: RawTable, batch: Batch) -> dict[str, Any]:

@@ -78,7 +78,8 @@ def load_world(
     actions = queries.actions(ledger, vintage=vintage)
     series = queries.series_kinds(ledger, vintage=vintage)
     known = {one.symbol: one for one in instruments}
-    for symbol, currency in sorted(currencies):
+    wanted = _with_successors(set(currencies), actions, known)
+    for symbol, currency in sorted(wanted):
         own = known[symbol]
         conversion = find_conversion(known.values(), own=own.currency, wanted=currency)
         if conversion is None or conversion.pair.symbol not in histories:
@@ -88,11 +89,30 @@ def load_world(
         instruments.append(replace(own, symbol=name, currency=currency))
         if symbol in histories:
             histories[name] = convert_history(histories[symbol], pair, conversion)
-        actions += convert_actions(paid, pair, conversion, name=name)
+        actions += [
+            replace(one, into=converted_name(one.into, currency))
+            if (one.into, currency) in wanted
+            else one
+            for one in convert_actions(paid, pair, conversion, name=name)
+        ]
         series[name] = series.get(symbol, "raw")
     market = build_market(instruments, histories, actions, series, codebook, as_of=as_of)
     number = {one.symbol: i for i, one in enumerate(instruments)}
     return World(market, tuple(instruments), number, tuple(actions))
+
+
+def _with_successors(
+    wanted: set[tuple[str, str]], actions: list[Action], known: dict[str, Instrument]
+) -> set[tuple[str, str]]:
+    """Return the wanted prices with those of whatever these instruments became."""
+    became = {one.instrument: one.into for one in actions if one.kind == "merger"}
+    for symbol, currency in list(wanted):
+        following = became.get(symbol, "")
+        while following in known and (following, currency) not in wanted:
+            if known[following].currency != currency:
+                wanted.add((following, currency))
+            following = became.get(following, "")
+    return wanted
 
 
 def _histories(ledger: Ledger, vintage: int) -> dict[str, PriceHistory]:

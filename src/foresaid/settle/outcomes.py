@@ -9,6 +9,7 @@ import numpy as np
 
 from foresaid.claims.binding import bind
 from foresaid.claims.registry import KINDS
+from foresaid.claims.relative import NO_RETURN
 from foresaid.settle.missing import MISSING, lacks_session
 from foresaid.settle.windows import (
     REASONS,
@@ -169,6 +170,7 @@ def settle_calls(
             ended = np.zeros(len(order), dtype=bool)
             ended[group.rows] = _legs_ended(times, market)[group.rows]
             work.leave(ended, "open", ENDED_LEG)
+            work.leave(_legs_lack_returns(times, market, group.rows), "void", NO_RETURN)
         if any(mark.role == "level" for mark in group.kind.marks):
             barred = np.zeros(len(order), dtype=bool)
             barred[group.rows] = total_return[group.rows]
@@ -177,6 +179,15 @@ def settle_calls(
         for start in range(0, len(live), CHUNK):
             work.settle(group.kind, live[start : start + CHUNK])
     return work.outcomes()
+
+
+def _legs_lack_returns(times: CallTimes, market: Market, rows: IntArray) -> BoolArray:
+    """Return where a compared instrument is quoted by difference and so has no return."""
+    result = np.zeros(len(times.instrument), dtype=bool)
+    if times.legs is not None:
+        additive = np.append(market.venue.additive, False)
+        result[rows] = additive[times.legs[rows]].any(axis=1)
+    return result
 
 
 def _legs_ended(times: CallTimes, market: Market) -> BoolArray:

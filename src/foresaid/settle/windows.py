@@ -131,8 +131,7 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         last = np.minimum(last, end)
         rolled &= dated
     sound = (last > reference) & reached & begun
-    reason = np.zeros(len(number), dtype=np.int64)
-    running = np.zeros(len(number), dtype=bool)
+    reason, running = np.zeros(len(number), dtype=np.int64), np.zeros(len(number), dtype=bool)
     if bars.longest_gap > rules.roll_back_days:
         far = np.flatnonzero(rolled & sound)
         far = far[times.deadline_day[far] - bars.day[last[far]] > rules.roll_back_days]
@@ -146,7 +145,10 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         end = bars.last_position[number[odd]]
         running[odd] = state.begun & ~state.reached & (first[odd] <= end)
         # positions that mean nothing still have to be positions
-        reference[odd] = np.minimum(reference[odd], np.maximum(end, floor[odd]))
+        top = max(len(bars.day) - 1, 0)
+        reference[odd] = np.minimum(reference[odd], np.clip(end, floor[odd], None)).clip(
+            max=top
+        )
         first[odd] = np.minimum(first[odd], last[odd])
     additive = market.venue.additive.take(number)
     windows = Windows(floor, reference, first, last, additive, times.legs)
@@ -179,7 +181,7 @@ def _reasons(state: _State, market: Market) -> IntArray:
     reason[state.reached & (state.length == 0)] = SAME_CLOSE
     reason[state.reached & (state.length < 0)] = EMPTY
     reason[~state.begun] = NO_REFERENCE
-    reason[~state.begun & state.dated & state.reached] = EMPTY
+    reason[~state.begun & state.reached] = EMPTY
     return reason
 
 
