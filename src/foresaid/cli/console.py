@@ -74,8 +74,10 @@ def show_issues(issues: Iterable[Issue]) -> None:
     """Tell the faults of a file, the first ones in full."""
     from foresaid.report.tables import issue_lines
 
-    lines = issue_lines(issues)
-    for line in lines[:SHOWN_ISSUES]:
+    found = tuple(issues)
+    counts = [issue for issue in found if issue.code == "more-issues"]  # those not listed
+    lines = issue_lines(issue for issue in found if issue.code != "more-issues")
+    for line in (*lines[:SHOWN_ISSUES], *issue_lines(counts)):
         say(line)
     if len(lines) > SHOWN_ISSUES:
         say(f"... and {len(lines) - SHOWN_ISSUES} more of the same file.")

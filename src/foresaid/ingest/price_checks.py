@@ -35,7 +35,7 @@ def unknown_names(draft: Draft, known: Mapping[str, Instrument]) -> list[Finding
     for count, at in enumerate(unknown):
         lines = draft.lines[draft.instrument == at] if count < LISTED else NO_LINES
         hint = unknown_hint(draft.symbols[at], known if count < _MOST_HINTS else ())
-        message = f"{name_or_none(draft.symbols[at])} ({len(lines):,} rows)"
+        message = f"{name_or_none(draft.symbols[at])} ({_rows(len(lines))})"
         value = clip(draft.symbols[at])
         line = int(lines[0]) if len(lines) else 0
         issue = Issue(
@@ -45,6 +45,10 @@ def unknown_names(draft: Draft, known: Mapping[str, Instrument]) -> list[Finding
     if len(unknown) > LISTED:
         findings.append(_further_unknown(draft, unknown[LISTED:]))
     return findings
+
+
+def _rows(number: int) -> str:
+    return f"{number:,} row" + ("" if number == 1 else "s")
 
 
 def _further_unknown(draft: Draft, unknown: list[int]) -> Finding:

@@ -13,6 +13,7 @@ from foresaid.ingest.prices import parse_prices
 from foresaid.ingest.things import parse_forecasters, parse_instruments
 from foresaid.ledger import queries, writes
 from foresaid.model.issues import Issue, clip
+from foresaid.pipeline.kinds import check_kinds
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
@@ -184,6 +185,7 @@ def _actions(job: Job) -> Batch:
 
 def _prices(job: Job) -> Batch:
     instruments = queries.instruments(job.ledger)
+    check_kinds((one for _, one in instruments.values()), job.codebook)
     parsed = parse_prices(
         job.table,
         instrument=job.request.instrument,
@@ -256,6 +258,7 @@ def _price_rows(numbers: Any, parsed: PriceFile, rows: Any, load: int) -> Any:  
 
 def _calls(job: Job) -> Batch:
     instruments, forecasters = queries.instruments(job.ledger), queries.forecasters(job.ledger)
+    check_kinds((one for _, one in instruments.values()), job.codebook)
     handles = {handle: handle for handle in forecasters}
     for handle, (_, one) in forecasters.items():
         handles |= {alias: handle for alias in one.aliases if alias not in forecasters}

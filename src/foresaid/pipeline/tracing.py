@@ -70,6 +70,10 @@ def trace_call(ledger: Ledger, ref: str) -> Trace:
     row = {str(name): value for name, value in found.iloc[0].items()}
     if row["result"] is None:
         raise UsageError(f"{ref} came after the last settlement. Run: foresaid settle")
+    if row["given"] and queries.last_decision(ledger) != settlement.last_decision:
+        raise UsageError(
+            "Conditions were decided since the last settlement. Run: foresaid settle"
+        )
     listed = {name: row[name] for name in CALL_COLUMNS}
     alternates = json.loads(row["alternates"] or "{}")
     if row["not_a_call"]:

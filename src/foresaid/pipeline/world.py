@@ -20,6 +20,7 @@ from foresaid.market.currency import (
     find_conversion,
 )
 from foresaid.market.histories import Market, PriceHistory, build_market
+from foresaid.pipeline.kinds import check_kinds
 from foresaid.settle.outcomes import CallClaims
 from foresaid.settle.windows import CallTimes
 
@@ -74,6 +75,7 @@ def load_world(
     instrument's own; those for which the ledger has no pair of currencies are left out.
     """
     instruments = [one for _, one in queries.instruments(ledger).values()]
+    check_kinds(instruments, codebook)
     histories = _histories(ledger, vintage)
     actions = queries.actions(ledger, vintage=vintage)
     series = queries.series_kinds(ledger, vintage=vintage)
