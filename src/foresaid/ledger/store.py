@@ -76,8 +76,12 @@ class Ledger:
     def __enter__(self) -> Self:
         return self
 
-    def __exit__(self, *_: object) -> None:
+    def __exit__(self, _kind: object, fault: BaseException | None, _trace: object) -> None:
+        """Close the ledger; what SQLite says of a damaged file becomes a ``LedgerError``."""
         self.db.close()
+        if isinstance(fault, sqlite3.Error):
+            with _told(self.path):
+                raise fault
 
     @contextmanager
     def _closed_on_fault(self) -> Iterator[None]:

@@ -157,8 +157,10 @@ def load_codebook(path: Path | None) -> Codebook:
         return default_codebook()
     try:
         text = path.read_text("utf-8")
-    except (OSError, UnicodeDecodeError) as fault:
-        raise InputRejected(f"The codebook {path} cannot be read: {fault}") from fault
+    except OSError as fault:
+        raise InputRejected(f"The codebook {path} cannot be read: {fault.strerror}.") from fault
+    except UnicodeDecodeError as fault:
+        raise InputRejected(f"The codebook {path} is no text in UTF-8.") from fault
     return parse_codebook(text, file=str(path))
 
 
