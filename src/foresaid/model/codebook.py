@@ -160,7 +160,9 @@ def load_codebook(path: Path | None) -> Codebook:
     except OSError as fault:
         raise InputRejected(f"The codebook {path} cannot be read: {fault.strerror}.") from fault
     except UnicodeDecodeError as fault:
-        raise InputRejected(f"The codebook {path} is no text in UTF-8.") from fault
+        raise InputRejected(
+            f"The codebook {path} cannot be read: it is no text in UTF-8."
+        ) from fault
     return parse_codebook(text, file=str(path))
 
 

@@ -4,13 +4,12 @@ from __future__ import annotations
 
 import json
 from dataclasses import dataclass
-from datetime import date, timedelta
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from foresaid.claims.kernels import Over
-from foresaid.claims.phrases import parse_claim, print_number
+from foresaid.claims.phrases import parse_claim
 from foresaid.claims.registry import KINDS
 from foresaid.ledger import queries
 from foresaid.model.codebook import parse_codebook
@@ -18,16 +17,16 @@ from foresaid.model.errors import UsageError
 from foresaid.pipeline.listing import CALL_COLUMNS
 from foresaid.pipeline.scoring import listed_calls
 from foresaid.pipeline.settling import judge
+from foresaid.pipeline.trace_words import action_text, clock_text, day_of, price_text
 
 if TYPE_CHECKING:
     from foresaid.claims.kernels import Bound
     from foresaid.claims.kind import Kind
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
-    from foresaid.model.records import Action, Instrument
+    from foresaid.model.records import Instrument
     from foresaid.pipeline.outcome_rows import Judgement
 
-EPOCH = date(1970, 1, 1)
 TINY = 1e-12
 
 
@@ -176,7 +175,7 @@ class _Teller:
     def _condition(self) -> str:
         if not self.row["given"]:
             return ""
-        start = _day(int(self.judged.calls.times.said_day[0]))
+        start = day_of(int(self.judged.calls.times.said_day[0]))
         if self.row["reference_session"] is None:
             return f"{self.row['given']}: {self.row['reason']}"
         return f"{self.row['given']}: came true; the clock of the call starts on {start}"
@@ -191,29 +190,34 @@ class _Teller:
 
     def _publication(self) -> str:
         times = self.judged.calls.times
-        day, minute = _day(int(times.said_day[0])), float(times.said_minute[0])
+        day, minute = day_of(int(times.said_day[0])), float(times.said_minute[0])
         zone = self.instrument.zone or "the time as written (the instrument has no zone)"
         if minute < 0:
             rule = self.book.settlement.day_only.replace("-", " that day's ")
             return f"{day:%A} {day}, no time given: counts as {rule}"
         venue = self.market.venue
-        opens, closes = _clock(venue.opens[self.number]), _clock(venue.closes[self.number])
+        opens, closes = (
+            clock_text(venue.opens[self.number]),
+            clock_text(venue.closes[self.number]),
+        )
         hours = f"opens {opens}, closes {closes}"
         if not venue.hours_known[self.number]:
             hours += " (hours assumed by the codebook)"
-        return f"{self.row['said_at']} is {day:%A} {day} {_clock(minute)} in {zone}; {hours}"
+        return (
+            f"{self.row['said_at']} is {day:%A} {day} {clock_text(minute)} in {zone}; {hours}"
+        )
 
     def _reference(self) -> str:
         if self.row["reference_session"] is None:
             return "no session yet whose close is at or after publication"
         return (
             f"{self.row['reference_session']}, the first session whose close is at or after "
-            f"publication: {_price(self.row['reference_price'])}"
+            f"publication: {price_text(self.row['reference_price'])}"
         )
 
     def _horizon(self) -> str:
         row = self.row
-        said = _day(int(self.judged.calls.times.said_day[0]))
+        said = day_of(int(self.judged.calls.times.said_day[0]))
         typed = row["horizon_typed"] or "nothing said"
         if row["sessions"]:
             return f"{typed}: {row['sessions']} sessions after the reference session"
@@ -246,10 +250,10 @@ class _Teller:
         """Return the corporate actions that bear on the result."""
         if self.row["reference_session"] is None:
             return "none looked at: there is no reference yet"
-        said = _day(int(self.judged.calls.times.said_day[0]))
-        end = _day(int(self.market.bars.day[self.windows.last[0]]))
+        said = day_of(int(self.judged.calls.times.said_day[0]))
+        end = day_of(int(self.market.bars.day[self.windows.last[0]]))
         texts = [
-            _action_text(one)
+            action_text(one)
             for one in self.judged.world.actions
             if one.instrument == self.instrument.symbol
             and said < one.effective <= end
@@ -273,11 +277,11 @@ class _Teller:
         if self.kind.marks[index].role == "share":
             return f"{100 * mark:.10g} %"
         if bool(self.windows.additive[0]):
-            return f"{_price(reference)} {mark:+.10g} = {_price(reference + mark)}"
+            return f"{price_text(reference)} {mark:+.10g} = {price_text(reference + mark)}"
         price = reference * mark
         if self.kind.marks[index].role == "level":
-            return f"{_price(price)}, which is {mark:.6f} times the reference"
-        return f"{_price(reference)} x {mark:.10g} = {_price(price)}"
+            return f"{price_text(price)}, which is {mark:.6f} times the reference"
+        return f"{price_text(reference)} x {mark:.10g} = {price_text(price)}"
 
     def _arithmetic(self) -> str:
         row = self.row
@@ -288,9 +292,9 @@ class _Teller:
             factor[self.judged.outcomes.decided[0]] / factor[self.windows.reference[0]]
         )
         value = float(row["decided_price"])
-        shown = _price(value)
+        shown = price_text(value)
         if abs(scale - 1.0) > TINY:
-            shown += f" x {_price(scale)} = {_price(value * scale)}"
+            shown += f" x {price_text(scale)} = {price_text(value * scale)}"
         reference = float(row["reference_price"])
         move = f"{row['move_points']:+.10g}"
         if row["move_frac"] is not None:
@@ -300,7 +304,7 @@ class _Teller:
             tests.append(f"{self.kind.measures}: {row['measured']:.6g}")
         whole = (
             f"{self._field_name()} of {row['decided_session']} is {shown}, {move} from the "
-            f"reference {_price(reference)}"
+            f"reference {price_text(reference)}"
         )
         return "; ".join([whole, *tests])
 
@@ -316,7 +320,7 @@ class _Teller:
         holds = (value - edge) * side > 0 if bound.strict else (value - edge) * side >= 0
         words = {1: "above", -1: "below"}[side]
         words = words if bound.strict else f"at or {words}"
-        return f"{_price(value)} is {'' if holds else 'not '}{words} {_price(limit)}"
+        return f"{price_text(value)} is {'' if holds else 'not '}{words} {price_text(limit)}"
 
     def _field_name(self) -> str:
         outcomes = self.judged.outcomes
@@ -339,7 +343,7 @@ class _Teller:
         if "RANGE" in bounds[0].on.name:
             field = bars.high if up else bars.low
         at = own.start + int(np.argmax(field[own]) if up else np.argmin(field[own]))
-        return _day(int(bars.day[at])).isoformat()
+        return day_of(int(bars.day[at])).isoformat()
 
     def _result(self) -> str:
         row = self.row
@@ -365,29 +369,3 @@ class _Teller:
             return f"{chance}: no earlier window; {model}"
         weight = row["chance_disjoint"] / self.book.chance.enough_windows
         return f"{chance}: {counted}; {model}; weight {weight:.3g} on the first"
-
-
-def _action_text(action: Action) -> str:
-    numbers = {
-        "ratio": action.ratio and _price(action.ratio),
-        "amount": action.amount is not None and _price(action.amount),
-        "into": action.into,
-    }
-    said = ", ".join(f"{name} {value}" for name, value in numbers.items() if value)
-    text = f"{action.effective}: {action.kind}" + (f" ({said})" if said else "")
-    if action.kind in ("split", "rebase") and action.ratio:
-        factor = action.ratio if action.kind == "split" else 1.0 / action.ratio
-        text += f"; prices from then on times {_price(factor)} to compare with before"
-    return text
-
-
-def _day(number: int) -> date:
-    return EPOCH + timedelta(days=number)
-
-
-def _clock(minutes: float) -> str:
-    return f"{int(minutes) // 60:02d}:{int(minutes) % 60:02d}"
-
-
-def _price(value: float) -> str:
-    return print_number(float(f"{value:.12g}"))
