@@ -50,6 +50,7 @@ def parse_calls(table: RawTable, context: CallContext) -> Parsed[CodedCall]:
     order, dangling = _referred_first(rows, set(context.owners))
     had = {rows[at].ref for at in order} | set(context.owners)
     issues += [_dangling(table.file, rows[at], lines[at], had) for at in dangling]
+    issues.sort(key=lambda issue: issue.line or 0)
     return Parsed(tuple(rows[i] for i in order), tuple(lines[i] for i in order), tuple(issues))
 
 
