@@ -276,11 +276,12 @@ def test_references_that_lead_nowhere(desk):
     text = refs(("A1", "A2", ""), ("A2", "", "A1"), ("A3", "A3", ""), ("A4", "Z9", ""))
     found = desk.refuse("calls", text)
     assert len(found) == 5
-    for line, place in zip(found, ("line 4, copy_of", "line 5, copy_of"), strict=False):
+    # in the order of the file
+    assert "line 2, copy_of: `A2`" in found[0]
+    assert "line 3, revises: `A1`" in found[1]
+    for line, place in zip(found[2:], ("line 4, copy_of", "line 5, copy_of"), strict=False):
         assert place in line
         assert "no other statement" in line
-    assert "line 2, copy_of: `A2`" in found[2]
-    assert "line 3, revises: `A1`" in found[3]
 
 
 def test_a_reference_to_a_rejected_row_is_rejected_with_it(desk):
