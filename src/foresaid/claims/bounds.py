@@ -109,9 +109,11 @@ def limits_of(
     """Return the mark of a bound as prices, one for each window."""
     mark = marks[:, bound.mark]
     price = reference * mark
+    slack = np.abs(price)
     if windows.additive.any():
         price = np.where(windows.additive, reference + mark, price)
-    slack = np.maximum(np.abs(price), np.abs(reference))
+        # a level near zero may be a difference of two large numbers
+        slack = np.maximum(np.abs(price), np.abs(reference))
     slack *= tolerance
     side = _sides(bound, mark, windows.additive)
     outward = (bound.side or side) * (1 if bound.strict else -1)

@@ -315,7 +315,8 @@ class _Teller:
         reference = float(self.row["reference_price"])
         limit = reference + mark if additive else reference * mark
         side = bound.side or (1 if mark > (0.0 if additive else 1.0) else -1)
-        slack = self.book.settlement.tolerance * max(abs(limit), abs(reference))
+        size = max(abs(limit), abs(reference)) if additive else abs(limit)
+        slack = self.book.settlement.tolerance * size
         edge = limit + side * slack * (1 if bound.strict else -1)
         holds = (value - edge) * side > 0 if bound.strict else (value - edge) * side >= 0
         words = {1: "above", -1: "below"}[side]

@@ -28,7 +28,7 @@ if TYPE_CHECKING:
     from foresaid.model.codebook import SettlementRules
     from foresaid.settle.windows import CallTimes, Resolved
 
-CHUNK = 32_768  # windows judged at once: small enough to stay in the processor's cache
+CHUNK = 16_384  # windows judged at once: small enough to stay in the processor's cache
 NONE, MISS, HIT = -1, 0, 1
 CLOSE_BEFORE = "close_before"
 ENDED_LEG = "an instrument of the comparison ended, which comparisons do not handle yet"
