@@ -56,8 +56,8 @@ def test_a_withdrawn_call_is_marked_and_still_counts(run):
     ("args", "words"),
     [
         (("NO", "--at", "2024-01-02", "--why", "x"), "no call 'NO'"),
-        (("C1", "--at", "2023-01-02", "--why", "x"), "not between"),
-        (("C1", "--at", "2198-01-02", "--why", "x"), "not between"),
+        (("C1", "--at", "2023-01-02", "--why", "x"), "before the statement"),
+        (("C1", "--at", "2198-01-02", "--why", "x"), "after today"),
         (("C1", "--at", "soon", "--why", "x"), "--at"),
         (("C1", "--at", "2024-01-02", "--why", " "), "needs its reason"),
     ],

@@ -18,8 +18,8 @@ from foresaid.claims.phrases import (
     parse_claim,
     print_claim,
     stated_probability,
-    unit_faults,
 )
+from foresaid.claims.units import unit_faults
 from foresaid.ingest.cells import parse_probability
 from foresaid.ingest.dates import parse_date, parse_said_at
 from foresaid.ingest.faults import nearest

@@ -11,6 +11,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from foresaid.model.days import day_number
+
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
@@ -56,7 +58,7 @@ def factor_steps(actions: Iterable[Action]) -> FactorSteps:
     days, factors = [], []
     for action in sorted(actions, key=lambda one: one.effective):
         if action.ratio and action.kind in ("split", "rebase"):
-            days.append(np.datetime64(action.effective, "D").astype(np.int64))
+            days.append(day_number(action.effective))
             factors.append(action.ratio if action.kind == "split" else 1.0 / action.ratio)
     product = np.concatenate(([1.0], np.cumprod(np.array(factors, dtype=np.float64))))
     return FactorSteps(np.array(days, dtype=np.int64), product)

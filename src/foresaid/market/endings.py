@@ -12,6 +12,8 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from foresaid.model.days import day_number
+
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
@@ -40,7 +42,7 @@ class Ending:
 def ending_of(actions: Sequence[Action], *, today: int) -> Ending | None:
     """Return the first ending in force by ``today`` (days since 1970-01-01)."""
     for action in sorted(actions, key=lambda one: one.effective):
-        day = int(np.datetime64(action.effective, "D").astype(np.int64))
+        day = day_number(action.effective)
         if action.kind in ENDING and day <= today:
             ratio = float(action.ratio or 0.0) if action.kind == "merger" else 0.0
             return Ending(day, action.kind, ratio, float(action.amount or 0.0), action.into)

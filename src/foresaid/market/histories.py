@@ -11,6 +11,7 @@ import numpy as np
 from foresaid.market.actions import FactorSteps, factor_steps
 from foresaid.market.endings import NEVER, are_over, ended_days, ending_of, with_endings
 from foresaid.model.bars import Bars, concatenate_bars
+from foresaid.model.days import day_number
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
@@ -135,7 +136,7 @@ def build_market(
     as_of : date
         Sessions after this day are left out.
     """
-    today = int(np.datetime64(as_of, "D").astype(np.int64))
+    today = day_number(as_of)
     by_symbol: dict[str, list[Action]] = {one.symbol: [] for one in instruments}
     for action in actions:
         by_symbol[action.instrument].append(action)
@@ -216,7 +217,7 @@ def total_return(
     paid = [one for one in actions if one.kind == "dividend" and one.amount]
     growth = np.ones(len(close))
     for one in paid:
-        day = np.datetime64(one.effective, "D").astype(np.int64)
+        day = day_number(one.effective)
         at = int(np.searchsorted(history.day, day))
         if at < len(close) and close[at] > 0:
             growth[at] *= 1.0 + float(one.amount or 0.0) * factor[at] / close[at]

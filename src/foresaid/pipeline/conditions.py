@@ -10,7 +10,7 @@ that is not met makes the call void, one that is undecided leaves it open.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from datetime import date, datetime, time, timedelta
+from datetime import datetime, time
 from typing import TYPE_CHECKING
 from zoneinfo import ZoneInfo
 
@@ -22,6 +22,7 @@ from foresaid.claims.conditions import Condition, parse_condition
 from foresaid.claims.horizons import parse_horizon
 from foresaid.claims.phrases import print_claim
 from foresaid.market.clock import local_times
+from foresaid.model.days import day_number, day_of
 from foresaid.pipeline.world import CodedCalls, World, coded_calls
 from foresaid.settle.outcomes import settle_calls
 
@@ -31,7 +32,6 @@ if TYPE_CHECKING:
     from foresaid.ledger.queries import Decision
     from foresaid.model.codebook import Codebook
 
-EPOCH = date(1970, 1, 1)
 NOT_MET = "its condition was not met"
 UNDECIDED = "its condition is not decided yet"
 TOO_LATE = "its condition came true after its deadline"
@@ -68,7 +68,7 @@ def with_conditions(
     rows = np.flatnonzero(given != "")
     if not len(rows):
         return calls
-    said = [EPOCH + timedelta(days=int(calls.times.said_day[row])) for row in rows]
+    said = [day_of(int(calls.times.said_day[row])) for row in rows]
     parsed = [
         parse_condition(given[row], said=day) for row, day in zip(rows, said, strict=True)
     ]
@@ -136,7 +136,7 @@ def _close_of(world: World, number: int, day: int, zone: str) -> _Met:
     if not (venue.zone and venue.closes and zone) or venue.closes == "24:00":
         return _Met(day, -1.0)
     hours, minutes = map(int, venue.closes.split(":"))
-    local = datetime.combine(EPOCH + timedelta(days=day), time(hours, minutes))
+    local = datetime.combine(day_of(day), time(hours, minutes))
     instant = local.replace(tzinfo=ZoneInfo(venue.zone)).isoformat(timespec="seconds")
     there, minute = local_times([instant], [zone])
     return _Met(int(there[0]), float(minute[0]))
@@ -174,9 +174,9 @@ def _restarted(
 
 def _deadline_from(row: pd.Series, day: int, codebook: Codebook) -> int | None:
     """Return the deadline counted from the day the clock started, None where it has gone."""
-    start = EPOCH + timedelta(days=day)
+    start = day_of(day)
     try:
         horizon = parse_horizon(row["horizon"], said=start, codebook=codebook)
     except PhraseError:
         return None
-    return 0 if horizon.deadline is None else (horizon.deadline - EPOCH).days
+    return 0 if horizon.deadline is None else day_number(horizon.deadline)

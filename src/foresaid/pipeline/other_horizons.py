@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from dataclasses import replace
-from datetime import date, timedelta
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from foresaid.claims.horizons import parse_horizon
+from foresaid.model.days import day_number, day_of
 from foresaid.settle.outcomes import LONGER, NONE, SHORTER, CallClaims, settle_calls
 from foresaid.settle.windows import CallTimes
 
@@ -17,8 +17,6 @@ if TYPE_CHECKING:
     from foresaid.model.codebook import Codebook
     from foresaid.pipeline.world import CodedCalls, World
     from foresaid.settle.outcomes import Outcomes
-
-EPOCH = date(1970, 1, 1)
 
 
 def with_other_horizons(
@@ -50,11 +48,11 @@ def _settled_with(
     sessions = np.zeros(len(rows), dtype=np.int64)
     for at, (word, day) in enumerate(zip(words, said.tolist(), strict=True)):
         lengths = codebook.horizon_words.get(word, codebook.horizon_default)
-        start = EPOCH + timedelta(days=day)
+        start = day_of(day)
         horizon = parse_horizon(getattr(lengths, name), said=start, codebook=codebook)
         sessions[at] = horizon.sessions or 0
         if horizon.deadline is not None:
-            deadline_day[at] = (horizon.deadline - EPOCH).days
+            deadline_day[at] = day_number(horizon.deadline)
     times = CallTimes(
         calls.times.instrument[rows],
         said,

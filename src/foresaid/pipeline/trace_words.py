@@ -1,16 +1,13 @@
-"""Days, clocks, prices and corporate actions in the words of a trace."""
+"""Clocks, prices and corporate actions in the words of a trace."""
 
 from __future__ import annotations
 
-from datetime import date, timedelta
 from typing import TYPE_CHECKING
 
 from foresaid.claims.phrases import print_number
 
 if TYPE_CHECKING:
     from foresaid.model.records import Action
-
-EPOCH = date(1970, 1, 1)
 
 
 def action_text(action: Action) -> str:
@@ -26,11 +23,6 @@ def action_text(action: Action) -> str:
         factor = action.ratio if action.kind == "split" else 1.0 / action.ratio
         text += f"; prices from then on times {price_text(factor)} to compare with before"
     return text
-
-
-def day_of(number: int) -> date:
-    """Return the date of a day number (days since 1970-01-01)."""
-    return EPOCH + timedelta(days=number)
 
 
 def clock_text(minutes: float) -> str:

@@ -13,11 +13,12 @@ from foresaid.claims.phrases import parse_claim
 from foresaid.claims.registry import KINDS
 from foresaid.ledger import queries
 from foresaid.model.codebook import parse_codebook
+from foresaid.model.days import day_of
 from foresaid.model.errors import UsageError
 from foresaid.pipeline.listing import CALL_COLUMNS
 from foresaid.pipeline.scoring import listed_calls
 from foresaid.pipeline.settling import judge
-from foresaid.pipeline.trace_words import action_text, clock_text, day_of, price_text
+from foresaid.pipeline.trace_words import action_text, clock_text, price_text
 
 if TYPE_CHECKING:
     from foresaid.claims.kernels import Bound

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from foresaid.claims.binding import UNIT_CODES
+from foresaid.claims.binding import quantity_arrays
 from foresaid.claims.phrases import parse_claim
 from foresaid.claims.registry import KINDS
 from foresaid.ledger import queries
@@ -165,12 +165,7 @@ def _claims(
     """Return what the calls say and what they compare; each distinct phrase is read once."""
     phrases, codes = np.unique(frame["claim"].to_numpy(dtype=str), return_inverse=True)
     parsed = [parse_claim(str(phrase)) for phrase in phrases]
-    values = np.zeros((len(parsed), MAX_QUANTITIES))
-    units = np.zeros((len(parsed), MAX_QUANTITIES), dtype=np.int64)
-    for row, claim in enumerate(parsed):
-        for column, quantity in enumerate(claim.quantities):
-            values[row, column] = quantity.value
-            units[row, column] = UNIT_CODES[quantity.unit]
+    values, units = quantity_arrays(parsed, MAX_QUANTITIES)
     kinds = np.array([claim.kind for claim in parsed], dtype=object)
     legs = _legs(parsed, world)
     blocked = _blocked(frame, instruments)

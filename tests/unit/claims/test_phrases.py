@@ -8,9 +8,9 @@ from foresaid.claims.phrases import (
     parse_claim,
     print_claim,
     print_number,
-    unit_faults,
 )
 from foresaid.claims.registry import KINDS, NOT_A_CALL
+from foresaid.claims.units import unit_faults
 from foresaid.model.codebook import default_codebook
 from support.phrases import claims, phrases_in
 
