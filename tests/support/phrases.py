@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from contextlib import contextmanager
+from itertools import pairwise
 
 from hypothesis import strategies as st
 
@@ -27,12 +28,14 @@ def claims(draw, kinds=None):
     quantities, others = [], []
     names = st.lists(st.sampled_from(["ABC", "DE.F", "G-7"]), min_size=1, unique=True)
     for slot in kind.slots:
-        if slot.startswith("instrument"):
+        if slot in ("quantiles", "bins"):
+            quantities += draw(distributions(bins=slot == "bins"))
+        elif slot.startswith("instrument"):
             others += draw(names)[: 1 if slot == "instrument" else None]
         elif slot == "level":
             quantities.append(Quantity(draw(st.floats(**finite))))
         elif slot == "percent":
-            high = 99.999 if kind.states_probability else 1e6
+            high = 99.999 if kind.states else 1e6
             quantities.append(Quantity(draw(st.floats(1e-9, high)), "%"))
         else:
             unit = draw(st.sampled_from(UNITS))
@@ -44,6 +47,28 @@ def claims(draw, kinds=None):
             low, high = Quantity(-1.0), Quantity(1.0)
         quantities = [*sorted((low, high), key=lambda one: one.value), *rest]
     return Claim(kind.name, tuple(quantities), others=tuple(others))
+
+
+@st.composite
+def distributions(draw, *, bins):
+    """The numbers of two to nine quantiles or bins, a percentage and a level in turn."""
+    n = draw(st.integers(2, 9))
+    steps = draw(st.lists(st.integers(1, 400), min_size=n, max_size=n))
+    begin = draw(st.integers(-50, 5000))
+    levels = [float(begin + sum(steps[: i + 1])) for i in range(n)]
+    if bins:
+        cuts = sorted(draw(st.lists(st.integers(0, 99), min_size=n - 1, max_size=n - 1)))
+        ends = [0, *cuts, 100]
+        shares = [float(b - a) for a, b in pairwise(ends)]
+        shares = shares if max(shares) < 100.0 else [50.0, *[0.0] * (n - 2), 50.0]
+    else:
+        shares = sorted(draw(st.sets(st.integers(1, 99), min_size=n, max_size=n)))
+    numbers = []
+    for at, share in enumerate(shares):
+        numbers.append(Quantity(float(share), "%"))
+        if at < n - bins:
+            numbers.append(Quantity(levels[at]))
+    return numbers
 
 
 def phrases_in(text):

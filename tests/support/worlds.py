@@ -7,15 +7,17 @@ src/ but the records it is handed.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from hypothesis import strategies as st
 
-from foresaid.claims.binding import UNIT_CODES
+from foresaid.claims.binding import quantity_arrays
 from foresaid.claims.phrases import parse_claim
 from foresaid.claims.registry import KINDS
-from foresaid.market.histories import PriceHistory, build_market
+from foresaid.market.histories import build_market
 from foresaid.model.codebook import default_codebook
+from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Action, Instrument
 from foresaid.settle.outcomes import CallClaims
 from foresaid.settle.windows import CallTimes
@@ -67,11 +69,7 @@ def arrays_of(calls):
     """Return the arrays that settlement reads."""
     n = len(calls)
     parsed = [parse_claim(call.phrase) for call in calls]
-    values, units = np.zeros((n, 3)), np.zeros((n, 3), dtype=np.int64)
-    for row, claim in enumerate(parsed):
-        for column, quantity in enumerate(claim.quantities):
-            values[row, column] = quantity.value
-            units[row, column] = UNIT_CODES[quantity.unit]
+    values, units = quantity_arrays(parsed)
     times = CallTimes(
         np.zeros(n, dtype=np.int64),
         np.array([call.said_day for call in calls], dtype=np.int64),
@@ -105,15 +103,32 @@ def worlds(draw, *, min_size=8, max_size=60, splits=False):
 
 
 @st.composite
+def distribution_texts(draw, lowest, *, bins):
+    """Quantiles or bins whose levels begin near the lowest price of a world."""
+    n = draw(st.integers(2, 4))
+    levels = sorted(draw(st.sets(st.integers(lowest, lowest + 30), min_size=n, max_size=n)))
+    if not bins:
+        shares = sorted(draw(st.sets(st.integers(1, 99), min_size=n, max_size=n)))
+        return ", ".join(f"{p}%={x}" for p, x in zip(shares, levels, strict=True))
+    levels = levels[1:]
+    names = [f"<{levels[0]}", *(f"{a} to {b}" for a, b in pairwise(levels)), f">{levels[-1]}"]
+    cuts = sorted(draw(st.sets(st.integers(1, 99), min_size=n - 1, max_size=n - 1)))
+    shares = [b - a for a, b in pairwise([0, *cuts, 100])]
+    return ", ".join(f"{name}: {p}%" for name, p in zip(names, shares, strict=True))
+
+
+@st.composite
 def calls_in(draw, world, *, levels=True):
     """A call said somewhere in the history, of any registered kind."""
     alone = [k for k in KINDS.values() if not k.kernel.needs_legs]
-    kinds = [k for k in alone if levels or "level" not in k.slots]
+    kinds = [k for k in alone if levels or not {"level", "quantiles", "bins"} & {*k.slots}]
     kind = draw(st.sampled_from(kinds))
     low = float(np.min(world.low))
     slots = []
     for slot in kind.slots:
-        if slot == "percent":
+        if slot in ("quantiles", "bins"):
+            slots.append(draw(distribution_texts(max(1, int(low) - 2), bins=slot == "bins")))
+        elif slot == "percent":
             slots.append(f"{draw(st.integers(1, 99))}%")
         elif slot == "size":
             slots.append(f"{draw(st.integers(1, 12))}{draw(st.sampled_from(['%', 'pt']))}")

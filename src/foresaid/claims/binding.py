@@ -14,10 +14,14 @@ if TYPE_CHECKING:
 UNIT_CODES = {"": 0, "%": 1, "pp": 2, "bp": 3, "pt": 4}
 
 
-def quantity_arrays(claims: list[Claim], width: int) -> tuple[FloatArray, IntArray]:
-    """Return values and unit codes of claims of one kind, each of shape (n, width)."""
-    values = np.zeros((len(claims), width))
-    units = np.zeros((len(claims), width), dtype=np.int64)
+def quantity_arrays(claims: list[Claim]) -> tuple[FloatArray, IntArray]:
+    """Return values and unit codes of claims, each of shape (n, numbers in the longest).
+
+    Values are NaN where a claim has fewer numbers.
+    """
+    width = max((len(claim.quantities) for claim in claims), default=0)
+    values = np.full((len(claims), max(width, 1)), np.nan)
+    units = np.zeros(values.shape, dtype=np.int64)
     for row, claim in enumerate(claims):
         for column, quantity in enumerate(claim.quantities):
             values[row, column] = quantity.value
@@ -52,10 +56,13 @@ def bind(
     Returns
     -------
     ndarray of float, shape (n, n_marks)
-        Price over reference, or price less reference where ``additive``.
+        Price over reference, or price less reference where ``additive``. Marks of numbers that
+        no claim here has are left out.
     """
     columns = [
-        _mark(mark, values, units, reference, level_factor, additive) for mark in kind.marks
+        _mark(mark, values, units, reference, level_factor, additive)
+        for mark in kind.marks
+        if mark.quantity < values.shape[1]
     ]
     return columns[0][:, None] if len(columns) == 1 else np.stack(columns, axis=1)
 

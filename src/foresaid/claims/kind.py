@@ -7,6 +7,8 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+
     from foresaid.claims.kernels import Kernel
 
 
@@ -15,6 +17,9 @@ Role = Literal[
 ]
 Direction = Literal["up", "down", "none", "by level"]
 
+Loss = Literal["", "error", "interval", "pinball", "ranked"]
+
+DISTRIBUTION_SLOTS = ("quantiles", "bins")
 SLOT = re.compile(r"\{(\w+)\}")
 
 
@@ -42,7 +47,8 @@ class Kind:
     form : str
         The phrase with its slots: ``{level}`` is a price, ``{size}`` a move with its unit,
         ``{percent}`` a percentage of something else than the price, ``{instrument}`` another
-        instrument, ``{instruments}`` a list of them at the end.
+        instrument, ``{instruments}`` a list of them at the end, ``{quantiles}`` and
+        ``{bins}`` a distribution.
     reads : str
         When it is true, in words, for help and traces.
     marks : tuple of Mark
@@ -63,6 +69,10 @@ class Kind:
         What ``Judged.measured`` is, where it is not the move from the reference.
     names_level : bool
         Whether it speaks of a level without a number for it.
+    states : callable or None
+        From the numbers of the phrase to the probability that it states itself, as a fraction.
+    loss : {"", "error", "interval", "pinball", "ranked"}
+        Which loss of a point, interval or distribution forecast is kept beside the result.
     """
 
     form: str
@@ -76,6 +86,8 @@ class Kind:
     units_barred: tuple[str, ...] = ()
     measures: str = ""
     names_level: bool = False
+    states: Callable[[Sequence[float]], float] | None = None
+    loss: Loss = ""
 
     @property
     def name(self) -> str:
@@ -92,15 +104,16 @@ class Kind:
         """The slots that hold numbers, in order."""
         return tuple(slot for slot in self.slots if not slot.startswith("instrument"))
 
+    def slots_of(self, n_quantities: int) -> tuple[str, ...]:
+        """Return the slot of each number of a claim; a distribution has them in turn."""
+        if self.slots and self.slots[-1] in DISTRIBUTION_SLOTS:
+            return tuple(("percent", "level")[at % 2] for at in range(n_quantities))
+        return self.number_slots
+
     @property
     def is_sized(self) -> bool:
         """Whether the phrase names a size, a level or a range."""
         return bool(self.number_slots) or self.names_level
-
-    @property
-    def states_probability(self) -> bool:
-        """Whether a percentage of the phrase is the probability of a range."""
-        return self.form.endswith("at {percent}")
 
     def in_sense(self, *, inverse: bool) -> Kind:
         """Return the kind as it is judged on an instrument of that sense."""

@@ -3,24 +3,28 @@
 from __future__ import annotations
 
 import difflib
-import math
 import re
 from functools import lru_cache
 from typing import TYPE_CHECKING
 
-import numpy as np
-
 from foresaid.claims.claim import Claim, PhraseError, Quantity
+from foresaid.claims.distributions import (
+    BINS_EXAMPLE,
+    QUANTILES_EXAMPLE,
+    print_bins,
+    print_quantiles,
+    read_bins,
+    read_quantiles,
+)
 from foresaid.claims.kind import SLOT
+from foresaid.claims.numbers import NUMBER, bad_number, print_number, read_number
 from foresaid.claims.registry import KINDS, NOT_A_CALL
-from foresaid.model.issues import clip
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
     from foresaid.claims.kind import Kind
 
-NUMBER = re.compile(r"[+-]?(\d{1,3}(,\d{3})+|\d+)(\.\d+)?")
 SIZE = re.compile(r"(?P<number>[+-]?[\d,.]+)(?P<unit>%|pp|bp|pt)?")
 GAP_BEFORE_UNIT = re.compile(r"(?<=\d)\s+(?=(%|pp|bp|pt)(\s|$))", re.IGNORECASE)
 EXAMPLES = {
@@ -29,9 +33,15 @@ EXAMPLES = {
     "percent": ("20%",),
     "instrument": ("ABC",),
     "instruments": ("ABC, DEF",),
+    "quantiles": (QUANTILES_EXAMPLE,),
+    "bins": (BINS_EXAMPLE,),
 }
 LIST = "{instruments}"
 OTHERS = ("{instrument}", LIST)
+DISTRIBUTIONS = {
+    "{quantiles}": (read_quantiles, print_quantiles),
+    "{bins}": (read_bins, print_bins),
+}
 
 
 @lru_cache(maxsize=100_000)
@@ -84,20 +94,11 @@ def print_claim(claim: Claim) -> str:
     def fill(slot: re.Match[str]) -> str:
         if slot.group(1) == "instruments":
             return ", ".join(others)
+        if slot.group(0) in DISTRIBUTIONS:
+            return DISTRIBUTIONS[slot.group(0)][1](claim.quantities)
         return next(others) if slot.group(1) == "instrument" else next(numbers)
 
     return SLOT.sub(fill, KINDS[claim.kind].form)
-
-
-def print_number(value: float) -> str:
-    """Return the shortest decimal text that reads back as ``value``.
-
-    Examples
-    --------
-    >>> print_number(5000.0), print_number(0.1)
-    ('5000', '0.1')
-    """
-    return np.format_float_positional(value, trim="-")
 
 
 def stated_probability(claim: Claim) -> float | None:
@@ -108,9 +109,8 @@ def stated_probability(claim: Claim) -> float | None:
     >>> stated_probability(parse_claim("range 10 to 20 at 80%"))
     0.8
     """
-    if not claim.is_call or not KINDS[claim.kind].states_probability:
-        return None
-    return claim.quantities[-1].value / 100.0
+    states = KINDS[claim.kind].states if claim.is_call else None
+    return states([one.value for one in claim.quantities]) if states else None
 
 
 def legal_forms() -> list[str]:
@@ -129,6 +129,8 @@ def _tokens(kind: Kind) -> list[str]:
 def _shape_fits(kind: Kind, words: list[str]) -> bool:
     """Whether the words are those of the form, with something number-like in each slot."""
     tokens = _tokens(kind)
+    if tokens[-1] in DISTRIBUTIONS:
+        return len(words) >= len(tokens) and all(map(_fits, tokens, words))
     if tokens[-1] == LIST and len(words) >= len(tokens):
         tokens = tokens[:-1] + ["{instrument}"] * (len(words) - len(tokens) + 1)
     return len(tokens) == len(words) and all(
@@ -137,7 +139,7 @@ def _shape_fits(kind: Kind, words: list[str]) -> bool:
 
 
 def _fits(token: str, word: str) -> bool:
-    if token in OTHERS:
+    if token in OTHERS or token in DISTRIBUTIONS:
         return True
     if SLOT.fullmatch(token):
         return word[:1] in "+-.0123456789" or word[1:2].isdigit()
@@ -152,6 +154,8 @@ def _fill(kind: Kind, words: list[str]) -> Claim:
             others += " ".join(words[at:]).replace(",", " ").split()
         elif token in OTHERS:
             others.append(word)
+        elif token in DISTRIBUTIONS:
+            quantities += DISTRIBUTIONS[token][0](" ".join(words[at:]))
         elif slot:
             quantities.append(_READERS[slot.group(1)](word, kind))
     if not others and kind.form.endswith(LIST):
@@ -172,7 +176,7 @@ def _fill(kind: Kind, words: list[str]) -> Claim:
 
 def _level(word: str, kind: Kind) -> Quantity:
     if NUMBER.fullmatch(word):
-        return Quantity(_value(word))
+        return Quantity(read_number(word))
     size = SIZE.fullmatch(word.lower())
     if size and NUMBER.fullmatch(size["number"]):
         other = _legal_phrase(KINDS["ends higher by"], [word.lower().lstrip("+-")])
@@ -180,14 +184,14 @@ def _level(word: str, kind: Kind) -> Quantity:
             f"`{word}` is a size where `{kind.name}` needs a level, the price itself",
             f"Write a level, `{_example(kind.name)}`, or a size, `{other}`.",
         )
-    raise PhraseError(*_bad_number(word))
+    raise PhraseError(*bad_number(word))
 
 
 def _size(word: str, kind: Kind) -> Quantity:
     match = SIZE.fullmatch(word.lower())
     if match is None or not NUMBER.fullmatch(match["number"]):
-        raise PhraseError(*_bad_number(word))
-    value = _value(match["number"])
+        raise PhraseError(*bad_number(word))
+    value = read_number(match["number"])
     unit = match["unit"]
     if value <= 0:
         raise PhraseError(
@@ -211,29 +215,12 @@ def _percent(word: str, kind: Kind) -> Quantity:
             f"Write `{_example(kind.name)}`.",
         )
     quantity = _size(word, kind)
-    if kind.states_probability and quantity.value >= 100:
+    if kind.states and quantity.value >= 100:
         raise PhraseError(f"`{word}` is no probability", "Write a percentage below 100%.")
     return quantity
 
 
 _READERS = {"level": _level, "size": _size, "percent": _percent}
-
-
-def _value(number: str) -> float:
-    value = float(number.replace(",", ""))
-    if not math.isfinite(value):
-        raise PhraseError(f"`{clip(number)}` is too large", "Write a smaller number.")
-    return value
-
-
-def _bad_number(word: str) -> tuple[str, str]:
-    plain = word.rstrip("%pbt")
-    if "," in plain and not NUMBER.fullmatch(plain):
-        return (
-            f"`{word}` is not a number here: a comma may only set off thousands",
-            "Write the decimal mark as a point, such as 4.25, and no other marks.",
-        )
-    return f"`{word}` is not a number", "Write digits, such as 5000 or 4.25 or 5%."
 
 
 def _says_not_a_call(words: list[str]) -> bool:
@@ -300,7 +287,7 @@ def _in_words(kind: Kind, words: Iterable[str]) -> str:
     spare = {slot: iter(texts) for slot, texts in EXAMPLES.items()}
 
     def fill(slot: re.Match[str]) -> str:
-        if slot.group(0) in OTHERS:
+        if slot.group(0) in OTHERS or slot.group(0) in DISTRIBUTIONS:
             return next(spare[slot.group(1)])
         number = numbers.pop(0) if numbers else next(spare[slot.group(1)])
         has_unit = number[-1:] in "%pbt"

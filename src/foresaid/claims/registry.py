@@ -5,6 +5,8 @@ Registering a kind here is all that a new kind takes.
 
 from __future__ import annotations
 
+from foresaid.claims.distribution_kernels import BinsKernel, QuantilesKernel
+from foresaid.claims.distributions import most_in_bins, span_of_quantiles
 from foresaid.claims.kernels import Bound, On, Over
 from foresaid.claims.kind import Kind, Mark
 from foresaid.claims.paths import (
@@ -20,8 +22,10 @@ from foresaid.claims.shapes import (
     LOSS,
     SHARE,
     between_kind,
+    distribution_kind,
     end_kind,
     path_kind,
+    range_kind,
     returns_kind,
     sense_kind,
     target_kind,
@@ -303,12 +307,29 @@ register(
 
 register(target_kind())
 register(
-    between_kind(
+    range_kind(
         "range {level} to {level} at {percent}",
         "the deadline close is in the range, ends included; the percentage is the stated "
         "probability of that",
-        (LEVEL, Mark("level", 1)),
-        Over.END,
+    )
+)
+register(
+    distribution_kind(
+        "quantiles {quantiles}",
+        "the deadline close lies between the lowest and the highest quantile, both included",
+        QuantilesKernel(),
+        span_of_quantiles,
+        "pinball",
+    )
+)
+register(
+    distribution_kind(
+        "bins {bins}",
+        "the deadline close falls into the bin that was given the most, or into one of "
+        "several given as much",
+        BinsKernel(),
+        most_in_bins,
+        "ranked",
     )
 )
 register(

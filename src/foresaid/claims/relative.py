@@ -20,7 +20,8 @@ class RelativeKernel(Kernel):
     """Return of the instrument less the best return of the others, over the same days.
 
     Total returns where they are known for all of them, price returns for all otherwise: never
-    one leg of each. Another instrument's price on a day is its last close by then.
+    one leg of each. Another instrument's price on a day is its last close by then; one that
+    came to a fixed amount is worth that for good.
 
     Attributes
     ----------
@@ -57,11 +58,11 @@ class RelativeKernel(Kernel):
         before, behind = np.zeros(len(windows), bool), np.zeros(len(windows), bool)
         for leg, real in self._legs(windows):
             number = np.where(real, leg, 0)
-            calendar = bars.calendar(number)
-            start, *_ = calendar.look_up(bars.day[windows.reference])
-            before |= real & (start < bars.offsets[number])
-            _, _, is_beyond = calendar.look_up(bars.day[windows.last])
-            behind |= real & is_beyond
+            calendar, over = bars.calendar(number), bars.over[number]
+            start, _, had_ended = calendar.look_up(bars.day[windows.reference])
+            before |= real & ((start < bars.offsets[number]) | (over & had_ended))
+            _, _, is_beyond = calendar.look_up(_until(bars, windows))
+            behind |= real & is_beyond & ~over
         return [
             Unfit(windows.additive, NO_RETURN),
             Unfit(before, "no price of a compared instrument at the reference"),
@@ -97,10 +98,15 @@ class RelativeKernel(Kernel):
     ) -> FloatArray:
         calendar = bars.calendar(number)
         start, *_ = calendar.look_up(bars.day[windows.reference])
-        end, *_ = calendar.look_up(bars.day[windows.last])
+        end, *_ = calendar.look_up(_until(bars, windows))
         floor = bars.offsets[number]
         start, end = np.maximum(start, floor), np.maximum(end, floor)
         with np.errstate(divide="ignore", invalid="ignore"):
             plain = bars.close[end] / bars.close[start] - 1.0
             full = bars.total[end] / bars.total[start] - 1.0
         return np.where(total, full, plain)
+
+
+def _until(bars: Bars, windows: Windows) -> IntArray:
+    """Return the day on which the returns end, shape (n,)."""
+    return bars.day[windows.last] if windows.until is None else windows.until

@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING, Literal
 
 from foresaid.claims.bounds import BoundKernel, at_any_time, at_deadline, on_closes
+from foresaid.claims.distributions import MOST_PARTS
 from foresaid.claims.kernels import Bound, On, Over
 from foresaid.claims.kind import Direction, Kind, Mark
 from foresaid.claims.relative import RelativeKernel
 
 if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+
     from foresaid.claims.kernels import Kernel
+    from foresaid.claims.kind import Loss
 
 HERE, LEVEL, GAIN, LOSS = Mark("here"), Mark("level"), Mark("gain"), Mark("loss")
 SHARE = Mark("share")
@@ -81,7 +86,31 @@ def target_kind() -> Kind:
         kernel,
         "by level",
         {"any_time": at_any_time(kernel)},
+        loss="error",
     )
+
+
+def range_kind(form: str, reads: str) -> Kind:
+    """Return the kind of an interval whose probability is the last number of the phrase."""
+    kind = between_kind(form, reads, (LEVEL, Mark("level", 1)), Over.END)
+    return replace(
+        kind,
+        marks=(*kind.marks, Mark("share", 2)),
+        states=lambda values: values[2] / 100.0,
+        loss="interval",
+    )
+
+
+def distribution_kind(
+    form: str,
+    reads: str,
+    kernel: Kernel,
+    states: Callable[[Sequence[float]], float],
+    loss: Loss,
+) -> Kind:
+    """Return a kind whose numbers are a percentage and a level in turn."""
+    roles = [Mark("level" if at % 2 else "share", at) for at in range(2 * MOST_PARTS)]
+    return Kind(form, reads, tuple(roles), kernel, "none", states=states, loss=loss)
 
 
 def returns_kind(form: str, reads: str, side: Literal[1, -1], *, by: bool) -> Kind:

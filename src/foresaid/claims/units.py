@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from foresaid.claims.claim import Claim, PhraseError, Quantity
-from foresaid.claims.phrases import print_number
+from foresaid.claims.numbers import print_number
 from foresaid.claims.registry import KINDS
 
 if TYPE_CHECKING:
@@ -31,7 +31,7 @@ def unit_faults(
     """
     if not claim.is_call:
         return None
-    slots = KINDS[claim.kind].number_slots
+    slots = KINDS[claim.kind].slots_of(len(claim.quantities))
     for quantity, slot in zip(claim.quantities, slots, strict=True):
         if slot == "percent":
             continue

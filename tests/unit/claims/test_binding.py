@@ -12,7 +12,7 @@ from foresaid.claims.registry import KINDS
 def marks(phrase, *, reference=100.0, factor=1.0, additive=False, inverse=False):
     """Return the marks of one phrase."""
     claim = parse_claim(phrase)
-    values, units = quantity_arrays([claim], 2)
+    values, units = quantity_arrays([claim])
     found = bind(
         KINDS[claim.kind].in_sense(inverse=inverse),
         values,
@@ -94,11 +94,14 @@ def test_gain_and_loss_lie_around_the_reference(reference, size):
 def test_quantities_become_arrays():
     claims = [
         Claim("ends higher by", (Quantity(5.0, "%"),)),
-        Claim("ends higher by", (Quantity(25.0, "bp"),)),
+        Claim("ends between and", (Quantity(95.0), Quantity(105.0))),
     ]
-    values, units = quantity_arrays(claims, 2)
-    assert values.tolist() == [[5.0, 0.0], [25.0, 0.0]]
-    assert units.tolist() == [[1, 0], [3, 0]]
+    values, units = quantity_arrays(claims)
+    np.testing.assert_array_equal(values, [[5.0, np.nan], [95.0, 105.0]])
+    assert units.tolist() == [[1, 0], [0, 0]]
+    values, _ = quantity_arrays([Claim("ends higher")])
+    assert values.shape == (1, 1)
+    assert np.isnan(values).all()
     assert sorted(UNIT_CODES.values()) == list(range(5))
 
 

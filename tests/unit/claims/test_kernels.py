@@ -97,9 +97,18 @@ def test_hits_and_judge_and_outcomes_agree_for_every_kind(kind, data):
     additive = data.draw(st.booleans())
     windows = data.draw(windows_in(bars, additive=additive))
     one = st.tuples(*[points if additive else marks] * len(kind.marks))
-    if any(mark.role == "share" for mark in kind.marks):
+    if kind.loss in ("pinball", "ranked"):
+        parts = data.draw(st.integers(2, 9))
+        one = st.tuples(
+            *[st.sampled_from([0.1, 0.25, 0.4]), points if additive else marks] * parts
+        )
+    elif kind.loss == "interval":
+        one = st.tuples(*[points if additive else marks] * 2, st.just(0.8))
+    elif any(mark.role == "share" for mark in kind.marks):
         one = st.tuples(st.sampled_from([0.05, 0.2, 0.4, 0.8]))
     several = np.array(data.draw(st.lists(one, min_size=1, max_size=4)))
+    if kind.loss == "ranked":
+        several = several[:, :-1]  # the last bin has no edge
     table = kind.kernel.outcomes(bars, windows, several, TOLERANCE)
     assert table.shape == (len(several), len(windows))
     assert table.dtype == bool

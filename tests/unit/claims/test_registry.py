@@ -117,7 +117,7 @@ def test_every_registration_is_whole(name):
     assert kind.reads[0].islower()
     n_bounds = len(kind.kernel.bounds)
     assert all(0 <= bound.mark < len(kind.marks) for bound in kind.kernel.bounds)
-    assert all(mark.quantity < max(1, len(kind.slots)) for mark in kind.marks)
+    assert all(mark.quantity < max(1, len(kind.slots_of(18))) for mark in kind.marks)
     assert n_bounds <= 2
     for kernel in kind.alternates.values():
         assert kernel != kind.kernel
