@@ -18,7 +18,8 @@ if TYPE_CHECKING:
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import default_codebook, load_codebook
     from foresaid.pipeline.demo import build_demo
-    from foresaid.pipeline.scoring import listed_calls, score_ledger
+    from foresaid.pipeline.groups import listed_calls
+    from foresaid.pipeline.scoring import score_ledger
     from foresaid.pipeline.settling import settle_ledger
     from foresaid.pipeline.tracing import trace_call
     from foresaid.score.overlap import disjoint_windows
@@ -48,7 +49,7 @@ _HOMES = {
     "default_codebook": "model.codebook",
     "disjoint_windows": "score.overlap",
     "jeffreys_interval": "score.proportions",
-    "listed_calls": "pipeline.scoring",
+    "listed_calls": "pipeline.groups",
     "load_codebook": "model.codebook",
     "log_score": "score.probability",
     "parse_claim": "claims.phrases",

@@ -12,8 +12,9 @@ import pytest
 
 from foresaid.claims.binding import bind
 from foresaid.claims.registry import KINDS
-from foresaid.market.histories import PriceHistory, build_market
+from foresaid.market.histories import build_market
 from foresaid.model.codebook import default_codebook
+from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Instrument
 from foresaid.settle.outcomes import CHUNK
 from foresaid.settle.windows import CallTimes, resolve_windows

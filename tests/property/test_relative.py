@@ -6,8 +6,9 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from foresaid.claims.registry import KINDS
-from foresaid.market.histories import PriceHistory, build_market
+from foresaid.market.histories import build_market
 from foresaid.model.codebook import default_codebook
+from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Action, Instrument
 from foresaid.settle.outcomes import CallClaims, settle_calls
 from foresaid.settle.windows import CallTimes

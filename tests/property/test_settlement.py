@@ -1,6 +1,7 @@
 """Properties that settlement must have whatever the prices and calls are."""
 
 import dataclasses
+import re
 
 import numpy as np
 from hypothesis import given, settings
@@ -76,14 +77,12 @@ def test_scaling_all_prices_changes_nothing_where_no_level_is_named(data, scale)
 def test_scaling_prices_and_levels_together_changes_nothing(data, scale):
     world = data.draw(worlds())
     call = data.draw(calls_in(world))
-    words = []
-    for word in call.phrase.split():
-        bare = word.rstrip("%pt")
-        if bare.isdigit() and not word.endswith("%"):
-            word = f"{int(bare) * scale}{word[len(bare) :]}"
-        words.append(word)
+    # every number that is no percentage is a price
+    phrase = re.sub(
+        r"\d+(?![\d%])", lambda number: str(int(number.group()) * scale), call.phrase
+    )
     scaled = SmallWorld(world.day, world.high * scale, world.low * scale, world.close * scale)
-    other = dataclasses.replace(call, phrase=" ".join(words))
+    other = dataclasses.replace(call, phrase=phrase)
     same(settle(world, [call])[0], settle(scaled, [other])[0])
 
 

@@ -11,8 +11,9 @@ import pytest
 
 from foresaid.claims.binding import UNIT_CODES
 from foresaid.claims.phrases import parse_claim
-from foresaid.market.histories import PriceHistory, build_market
+from foresaid.market.histories import build_market
 from foresaid.model.codebook import default_codebook
+from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Instrument
 from foresaid.settle.outcomes import CallClaims, settle_calls
 from foresaid.settle.windows import CallTimes

@@ -4,8 +4,8 @@ Each case of `cases/*.toml` says in words what was stated, which convention deci
 wrong answer is tempting. Its instruments carry their prices: `rows` with the columns named in
 `columns` (`session, close` where none are), or a `start` with `closes` on the weekdays from it
 (`days = "all"`: on every day), less the `closed` days; `[100, 3]` stands for three closes of
-100. `highs`, `lows` and `totals` stand beside the closes. Instruments under `shared` belong to
-every case of their file. The closing time of a venue is `closes_at`.
+100. `highs`, `lows`, `totals` and `volumes` stand beside the closes. Instruments under `shared`
+belong to every case of their file. The closing time of a venue is `closes_at`.
 """
 
 import csv
@@ -24,11 +24,13 @@ from foresaid.cli.main import app
 from foresaid.model.codebook import default_codebook
 from foresaid.pipeline.conditions import NOT_MET, TOO_LATE, UNDECIDED
 from foresaid.pipeline.world import OTHER_CURRENCIES, OTHER_CURRENCY
+from foresaid.settle.outcomes import PRICE_QUERY, UNCOUNTABLE
 from foresaid.settle.windows import REASONS
 
 HERE = Path(__file__).parent
 SETTLEMENT = HERE.parents[1] / "docs" / "settlement.md"
-PRICE_KEYS = {"start", "days", "closed", "closes", "highs", "lows", "totals", "rows", "columns"}
+PRICE_KEYS = {"start", "days", "closed", "closes", "highs", "lows", "totals", "volumes"}
+PRICE_KEYS |= {"rows", "columns"}
 OTHER_KEYS = {"series", "actions"}
 CASE_KEYS = {
     "name",
@@ -43,6 +45,7 @@ CASE_KEYS = {
 } | {
     "instruments",
     "decisions",
+    "confirmed",
     "codebook",
 }
 
@@ -82,9 +85,9 @@ def _price_rows(thing):
         return [dict(zip(names, row, strict=True)) for row in thing["rows"]]
     closes = list(_unrolled(thing.get("closes", [])))
     columns = {"close": closes}
-    for name in ("high", "low", "total"):
+    for name in ("high", "low", "total", "volume"):
         if f"{name}s" in thing:
-            columns[name] = thing[f"{name}s"]
+            columns[name] = list(_unrolled(thing[f"{name}s"]))
             assert len(columns[name]) == len(closes)
     days = _sessions(thing) if closes else iter(())
     return [
@@ -175,6 +178,8 @@ def _settled(case, folder):
     for one in case.get("decisions", []):
         known = ("--at", one["at"], "--evidence", one["evidence"])
         ledger.run("decide", "W-1", one["answer"], *known)
+    for symbol, session in case.get("confirmed", []):
+        ledger.run("confirm", symbol, str(session), "--evidence", "the exchange's bulletin")
     ledger.run("settle", "--as-of", str(case["as_of"]), *book)
     (row,) = csv.DictReader(io.StringIO(ledger.run("calls", "--format", "csv")))
     return row, " ".join(ledger.run("trace", "W-1").split())
@@ -233,4 +238,5 @@ def test_every_reason_for_an_open_or_void_call_is_among_them():
     worked = {(case["expect"]["outcome"], case["expect"].get("reason")) for case in CASES}
     assert set(listed) <= worked
     own = {*REASONS[1:], NOT_MET, TOO_LATE, UNDECIDED, OTHER_CURRENCY, OTHER_CURRENCIES}
+    own |= {PRICE_QUERY, UNCOUNTABLE}
     assert own <= {reason for _, reason in worked}

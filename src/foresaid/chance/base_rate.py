@@ -6,8 +6,8 @@ claim is carried to it through its marks, so that a level keeps its distance to 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from dataclasses import dataclass, fields
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -24,7 +24,7 @@ CELLS = 4_000_000  # outcomes held at once
 
 @dataclass(frozen=True)
 class Starts:
-    """What carries calls to other starts; arrays (n,), marks (n, 2).
+    """What carries calls to other starts; arrays (n,), marks (n, n_marks).
 
     Attributes
     ----------
@@ -54,6 +54,14 @@ class Starts:
     additive: BoolArray
     marks: FloatArray
     legs: IntArray | None = None
+
+    def take(self, rows: IntArray | BoolArray) -> Starts:
+        """Return the starts at ``rows``."""
+        kept: dict[str, Any] = {}
+        for field in fields(self):
+            column = getattr(self, field.name)
+            kept[field.name] = None if column is None else column[rows]
+        return Starts(**kept)
 
 
 @dataclass(frozen=True)
@@ -106,8 +114,8 @@ def base_rates(
     """
     n = len(starts.reference)
     windows, hits = np.zeros(n, dtype=np.int64), np.zeros(n, dtype=np.int64)
-    for rows in _signatures(starts):
-        earlier = _earlier_windows(bars, starts, rows)
+    for rows in signatures(starts):
+        earlier = earlier_windows(bars, starts, rows)
         if earlier is None:
             continue
         block = max(1, CELLS // max(1, len(earlier.all)))
@@ -146,7 +154,7 @@ def disjoint_in_history(bars: Bars, starts: Starts) -> IntArray:
 
 
 @dataclass(frozen=True)
-class _Earlier:
+class Earlier:
     """All windows of one signature, by start, with the last day each one needs."""
 
     all: Windows
@@ -159,7 +167,7 @@ class _Earlier:
         return np.searchsorted(self.needs, have, side="right")
 
 
-def _signatures(starts: Starts) -> Iterator[IntArray]:
+def signatures(starts: Starts) -> Iterator[IntArray]:
     """Yield the rows that share instruments, window length and lag."""
     keys = np.stack(
         [
@@ -177,7 +185,7 @@ def _signatures(starts: Starts) -> Iterator[IntArray]:
         yield from np.split(order, steps)
 
 
-def _earlier_windows(bars: Bars, starts: Starts, rows: IntArray) -> _Earlier | None:
+def earlier_windows(bars: Bars, starts: Starts, rows: IntArray) -> Earlier | None:
     """Return every window that had ended before the latest of these calls."""
     one = rows[0]
     number, span = int(starts.instrument[one]), int(starts.span[one])
@@ -202,4 +210,4 @@ def _earlier_windows(bars: Bars, starts: Starts, rows: IntArray) -> _Earlier | N
         legs = np.broadcast_to(starts.legs[one], (len(at), starts.legs.shape[1]))
     lag = int(starts.lag[one])
     windows = Windows(np.full(len(at), floor), at, at + lag, last, additive, legs)
-    return _Earlier(windows, needs[sound])
+    return Earlier(windows, needs[sound])

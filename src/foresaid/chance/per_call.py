@@ -97,7 +97,7 @@ def chances(
     modelled = np.full(n, np.nan)
     counts = BaseRate(*(np.zeros(n, dtype=np.int64) for _ in fields(BaseRate)))
     for kind, rows in groups:
-        part = _take(starts, rows)
+        part = starts.take(rows)
         found = base_rates(kind.kernel, len(kind.marks), bars, part, tolerance)
         for field in fields(BaseRate):
             getattr(counts, field.name)[rows] = getattr(found, field.name)
@@ -201,11 +201,3 @@ def _deviation(bars: Bars, starts: Starts, rules: ChanceRules) -> FloatArray:
     has_history = before >= bars.offsets[starts.instrument]
     values = rolling[np.maximum(before, 0)] if len(rolling) else np.zeros(len(before))
     return np.where(has_history, values, np.nan)
-
-
-def _take(starts: Starts, rows: IntArray | BoolArray) -> Starts:
-    kept: dict[str, Any] = {}
-    for field in fields(starts):
-        column = getattr(starts, field.name)
-        kept[field.name] = None if column is None else column[rows]
-    return Starts(**kept)

@@ -89,6 +89,7 @@ def _walks(moves: FloatArray, *, additive: bool) -> tuple[Bars, Windows]:
         factor=plain,
         total=close,
         total_known=np.zeros(paths, dtype=bool),
+        over=np.zeros(paths, dtype=bool),
     )
     floor = offsets[:-1]
     reference = floor + LOOK_BACK - 1

@@ -165,65 +165,6 @@ def settle(
             say(f"Changed since the run before: {counted(len(done.changes), 'result')}.")
 
 
-class Answer(StrEnum):
-    """Whether a condition has come true."""
-
-    met = "met"
-    not_met = "not-met"
-
-
-def decide(
-    ref: Annotated[str, typer.Argument(metavar="REF", help="The call's ref.")],
-    answer: Annotated[
-        Answer, typer.Argument(metavar="met|not-met", help="Whether the fact came true.")
-    ],
-    ledger: LedgerPath,
-    at: Annotated[
-        str, typer.Option("--at", help="When it came true, or when it was clear it had not.")
-    ],
-    evidence: Annotated[str, typer.Option("--evidence", help="How anyone can check it.")],
-    who: Annotated[str, typer.Option("--who", help="Who decided.")] = "",
-) -> None:
-    """Say whether the plain fact on which a call depends came true.
-
-    The call's clock starts at that time. A later decision about the same call stands in for
-    an earlier one; both stay in the ledger.
-
-    Example: foresaid decide C-0412 met --at 2025-03-14 --evidence "Gazette no. 12, page 3"
-    """
-    from foresaid.ledger.store import Ledger
-    from foresaid.pipeline.deciding import DecisionRequest, decide_condition
-
-    request = DecisionRequest(
-        ref, answer is Answer.met, at, who, evidence, today=today(), at=now()
-    )
-    with Ledger.open(ledger) as opened:
-        condition = decide_condition(opened, request)
-    say(f"{ref}: {condition}: {answer.value}. Next: foresaid settle")
-
-
-def withdraw(
-    ref: Annotated[str, typer.Argument(metavar="REF", help="The call's ref.")],
-    ledger: LedgerPath,
-    at: Annotated[str, typer.Option("--at", help="When it was withdrawn.")],
-    why: Annotated[str, typer.Option("--why", help="The reason given.")],
-    who: Annotated[str, typer.Option("--who", help="Who keeps the record of it.")] = "",
-) -> None:
-    """Mark a call as withdrawn; it stays, and is settled all the same.
-
-    Scores tell how many calls of a group were withdrawn.
-
-    Example: foresaid withdraw C-0412 --at 2025-03-14 --why "Said on air to be a slip"
-    """
-    from foresaid.ledger.store import Ledger
-    from foresaid.pipeline.withdrawing import WithdrawalRequest, withdraw_call
-
-    request = WithdrawalRequest(ref, at, who, why, today=today(), at=now())
-    with Ledger.open(ledger) as opened:
-        withdraw_call(opened, request)
-    say(f"{ref}: marked as withdrawn. It still settles.")
-
-
 def _show_settled(done: Settled, form: Format) -> None:
     from foresaid.cli.console import console, give_out
     from foresaid.report.tables import Column, make_table
@@ -292,6 +233,4 @@ def add_to(app: typer.Typer) -> None:
     app.command("demo")(demo)
     app.command("new")(new)
     app.command("import")(import_)
-    app.command("decide")(decide)
-    app.command("withdraw")(withdraw)
     app.command("settle")(settle)

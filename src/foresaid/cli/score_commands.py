@@ -10,6 +10,13 @@ import typer
 from foresaid.cli.console import Format, console, counted, give_out, say, write
 from foresaid.cli.options import LedgerPath, OutputFormat
 
+GroupKeys = Annotated[
+    str,
+    typer.Option(
+        help="Group by any of forecaster, horizon, specificity, direction, instrument, "
+        "desk, year, with commas; 'all' for one group."
+    ),
+]
 NOTHING_SETTLED = "Nothing is settled yet, so outcomes are empty. Run: foresaid settle"
 
 
@@ -77,13 +84,7 @@ def trace(
 
 def score(
     ledger: LedgerPath,
-    by: Annotated[
-        str,
-        typer.Option(
-            help="Group by any of forecaster, horizon, specificity, direction, instrument, "
-            "desk, year, with commas; 'all' for one group."
-        ),
-    ] = "forecaster",
+    by: GroupKeys = "forecaster",
     weighted: Annotated[
         bool, typer.Option("--weighted", help="Count the codebook's class weights, too.")
     ] = False,
@@ -95,8 +96,7 @@ def score(
 
     Example: foresaid score --ledger desk.foresaid --by forecaster,horizon
     """
-    keys = [] if by.strip() == "all" else [key.strip() for key in by.split(",") if key.strip()]
-    show_scores(ledger, keys, format_, weighted=weighted)
+    show_scores(ledger, _keys(by), format_, weighted=weighted)
 
 
 def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) -> None:
@@ -128,6 +128,47 @@ def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) 
         screen.print(text)
 
 
+def errors(
+    ledger: LedgerPath,
+    by: GroupKeys = "forecaster",
+    format_: OutputFormat = Format.table,
+) -> None:
+    """Show how far off targets, ranges, quantiles and bins were.
+
+    Each is set against a forecast that takes no skill: no change for targets, the
+    instrument's own past moves for the others.
+
+    Example: foresaid errors --ledger desk.foresaid --by forecaster,horizon
+    """
+    from foresaid.ledger.store import Ledger
+    from foresaid.pipeline.forecast_errors import error_columns, forecast_errors
+    from foresaid.pipeline.groups import grouped_calls
+    from foresaid.report import tables
+    from foresaid.report.cautions import CAUTIONS
+
+    keys = _keys(by)
+    with Ledger.open(ledger) as opened:
+        found = grouped_calls(opened, keys)
+    rows = forecast_errors(found)
+    _tell_stale(found.stale)
+    if format_ is not Format.table:
+        give_out(rows, error_columns(keys), format_)
+        return
+    if not rows:
+        say("No target, range, quantiles or bins have matured with a stated date.")
+        return
+    screen = console()
+    screen.print(tables.make_table(tables.error_columns(keys), rows, width=screen.width))
+    screen.print(f"\n{tables.ERROR_GUIDE}\n")
+    for text in CAUTIONS:
+        screen.print(text)
+
+
+def _keys(by: str) -> list[str]:
+    """Return the keys of ``--by``; ``all`` stands for none."""
+    return [] if by.strip() == "all" else [key.strip() for key in by.split(",") if key.strip()]
+
+
 def _tell_stale(parts: tuple[str, ...]) -> None:
     if parts:
         say(f"Since the last settlement there are {' and '.join(parts)}. Run: foresaid settle")
@@ -138,3 +179,4 @@ def add_to(app: typer.Typer) -> None:
     app.command("calls")(calls)
     app.command("trace")(trace)
     app.command("score")(score)
+    app.command("errors")(errors)

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 APPLICATION_ID = 0x46534149  # "FSAI"
 
-_APPEND_ONLY = (
+_FIRST_TABLES = (
     "load",
     "codebook",
     "forecaster",
@@ -316,6 +316,27 @@ JOIN forecaster f ON f.id = s.forecaster
 LEFT JOIN instrument i ON i.id = c.instrument;
 """
 
+_CONFIRMATIONS = """
+CREATE TABLE confirmation (
+  id INTEGER PRIMARY KEY,
+  instrument INTEGER NOT NULL REFERENCES instrument,
+  session TEXT NOT NULL CHECK (session IS date(session)),
+  high REAL,
+  low REAL,
+  close REAL NOT NULL,
+  confirmed_at TEXT NOT NULL,
+  who TEXT NOT NULL,
+  evidence TEXT NOT NULL
+) STRICT;
+
+ALTER TABLE settlement ADD COLUMN last_confirmation INTEGER NOT NULL DEFAULT 0;
+ALTER TABLE outcome ADD COLUMN loss REAL;
+ALTER TABLE outcome ADD COLUMN loss_reference REAL;
+ALTER TABLE outcome ADD COLUMN covered REAL;
+"""
+
+APPEND_ONLY = (*_FIRST_TABLES, "confirmation")
 MIGRATIONS: tuple[str, ...] = (
-    _TABLES + "".join(_refuse_changes(table) for table in _APPEND_ONLY),
+    _TABLES + "".join(_refuse_changes(table) for table in _FIRST_TABLES),
+    _CONFIRMATIONS + _refuse_changes("confirmation"),
 )

@@ -70,6 +70,7 @@ class Settlement:
     vintage: int
     last_call: int
     last_decision: int
+    last_confirmation: int
     program: str
     settled_at: str
 
@@ -142,6 +143,33 @@ def last_decision(ledger: Ledger) -> int:
     return int(ledger.scalar("SELECT max(id) FROM decision") or 0)
 
 
+@dataclass(frozen=True, slots=True)
+class Confirmation:
+    """Prices that a person found right: the instrument's ledger id, the day, the numbers."""
+
+    instrument: int
+    day: int
+    high: float | None
+    low: float | None
+    close: float
+    who: str
+    evidence: str
+
+
+def confirmations(ledger: Ledger) -> list[Confirmation]:
+    """Return every confirmation of prices, oldest first."""
+    rows = ledger.db.execute(
+        "SELECT instrument, CAST(julianday(session) - 2440587.5 AS INTEGER), high, low, close, "
+        "who, evidence FROM confirmation ORDER BY id"
+    )
+    return [Confirmation(*row) for row in rows]
+
+
+def last_confirmation(ledger: Ledger) -> int:
+    """Return the id of the newest confirmation, 0 when there is none."""
+    return int(ledger.scalar("SELECT max(id) FROM confirmation") or 0)
+
+
 def series_kinds(ledger: Ledger, *, vintage: int) -> dict[str, str]:
     """Return what the prices of each instrument are: raw, split-adjusted or total-return."""
     rows = ledger.db.execute(
@@ -210,8 +238,8 @@ def statement_owners(ledger: Ledger) -> dict[str, str]:
 def latest_settlement(ledger: Ledger) -> Settlement | None:
     """Return the newest settlement run, None when nothing was settled yet."""
     row = ledger.db.execute(
-        "SELECT id, as_of, codebook, vintage, last_call, last_decision, program, settled_at "
-        "FROM settlement ORDER BY id DESC LIMIT 1"
+        "SELECT id, as_of, codebook, vintage, last_call, last_decision, last_confirmation, "
+        "program, settled_at FROM settlement ORDER BY id DESC LIMIT 1"
     ).fetchone()
     return None if row is None else Settlement(row[0], date.fromisoformat(row[1]), *row[2:])
 

@@ -149,6 +149,16 @@ def add_decision(ledger: Ledger, row: Mapping[str, Any], *, at: str) -> None:
     ledger.insert("decision", dict(row))
 
 
+def add_confirmation(ledger: Ledger, row: Mapping[str, Any], *, at: str) -> None:
+    """Add a person's word that prices are right.
+
+    ``row`` has the columns of the table: instrument, session, high, low, close, confirmed_at,
+    who, evidence.
+    """
+    ledger.record("confirm", dict(row), at=at)
+    ledger.insert("confirmation", dict(row))
+
+
 def add_withdrawal(ledger: Ledger, ref: str, row: Mapping[str, Any], *, at: str) -> None:
     """Add a withdrawal: withdrawn_at, who, why."""
     ledger.record("withdraw", {"ref": ref, **row}, at=at)

@@ -7,12 +7,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from foresaid.market.histories import PriceHistory
-
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
     from foresaid.model.bars import FloatArray, IntArray
+    from foresaid.model.price_history import PriceHistory
     from foresaid.model.records import Action, Instrument
 
 
@@ -65,13 +64,14 @@ def convert_history(
     rates = conversion.rates(pair, history.day)
     keep = np.isfinite(rates)
     rates = rates[keep]
-    total = None if history.total is None else history.total[keep] * rates
-    return PriceHistory(
-        history.day[keep],
-        history.high[keep] * rates,
-        history.low[keep] * rates,
-        history.close[keep] * rates,
-        total,
+    return replace(
+        history,
+        day=history.day[keep],
+        high=history.high[keep] * rates,
+        low=history.low[keep] * rates,
+        close=history.close[keep] * rates,
+        total=None if history.total is None else history.total[keep] * rates,
+        volume=None,
     )
 
 

@@ -18,7 +18,7 @@ if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
     from foresaid.market.actions import FactorSteps
-    from foresaid.model.bars import BoolArray, IntArray
+    from foresaid.model.bars import BoolArray, FloatArray, IntArray
     from foresaid.model.records import Action
 
 ENDING = ("cash-out", "merger", "wind-up")
@@ -101,12 +101,13 @@ def _carry(
     day = np.array([ending.day], dtype=np.int64)
     factor = float(steps.at(day)[0])
     worth = {name: np.full(1, ending.amount) for name in _PRICES}
-    has_range = np.ones(1, dtype=bool)
+    has_range, growth = np.ones(1, dtype=bool), np.ones(1)
     if other is not None and other_steps is not None and ending.ratio:
         begin = int(np.searchsorted(other["day"], ending.day))
         scale = ending.ratio / float(other_steps.at(day)[0])
         day, has_range = other["day"][begin:], other["has_range"][begin:]
         worth = {name: other[name][begin:] * scale + ending.amount for name in _PRICES}
+        growth = _with_dividends(other, begin, scale, ending.amount)
     close = worth["close"] * factor
     last_total = own["total"][keep - 1] / own["close"][keep - 1] if keep else 1.0
     added = {
@@ -114,10 +115,33 @@ def _carry(
         **{name: worth[name] * factor for name in _PRICES},
         "has_range": has_range,
         "factor": np.full(len(day), factor),
-        "total": close * last_total,
+        "total": close * growth * last_total,
     }
     joined = {name: np.concatenate((own[name][:keep], added[name])) for name in added}
     return own | joined
+
+
+def _with_dividends(other: Columns, begin: int, scale: float, amount: float) -> FloatArray:
+    """Return total-return worth over worth: what the successor paid since stays invested."""
+    close, total = other["close"][begin:], other["total"][begin:]
+    if not len(close):
+        return np.ones(0)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        paid = (total / total[0]) / (close / close[0])
+        worth = close * scale + amount
+        grown = (close * paid * scale + amount) / worth
+    return np.where(np.isfinite(grown), grown, 1.0)
+
+
+def days_of_terms(symbol: str, endings: Mapping[str, Ending]) -> list[int]:
+    """Return the days on which terms set the price of an instrument or of what it became."""
+    days: list[int] = []
+    seen: set[str] = set()
+    while symbol in endings and symbol not in seen:
+        seen.add(symbol)
+        days.append(endings[symbol].day)
+        symbol = endings[symbol].into
+    return days
 
 
 def are_over(symbols: Sequence[str], endings: Mapping[str, Ending]) -> BoolArray:

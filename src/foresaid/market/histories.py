@@ -9,7 +9,16 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from foresaid.market.actions import FactorSteps, factor_steps
-from foresaid.market.endings import NEVER, are_over, ended_days, ending_of, with_endings
+from foresaid.market.closures import FAR, days_in, halts_of, keep_rows
+from foresaid.market.doubts import Doubts, find_doubts
+from foresaid.market.endings import (
+    NEVER,
+    are_over,
+    days_of_terms,
+    ended_days,
+    ending_of,
+    with_endings,
+)
 from foresaid.model.bars import Bars, concatenate_bars
 from foresaid.model.days import day_number
 
@@ -17,23 +26,11 @@ if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
     from datetime import date
 
+    from foresaid.market.endings import Ending
     from foresaid.model.bars import BoolArray, FloatArray, IntArray
     from foresaid.model.codebook import Codebook
+    from foresaid.model.price_history import PriceHistory
     from foresaid.model.records import Action, Instrument
-
-
-@dataclass(frozen=True)
-class PriceHistory:
-    """One instrument's prices in the units of the file; arrays (n,), oldest first.
-
-    ``high``, ``low`` and ``total`` are NaN where the file had none.
-    """
-
-    day: IntArray
-    high: FloatArray
-    low: FloatArray
-    close: FloatArray
-    total: FloatArray | None = None
 
 
 @dataclass(frozen=True)
@@ -69,8 +66,24 @@ class Venue:
 class Market:
     """Everything known about prices on one day, in one vintage.
 
-    ``ended_day`` is when an instrument ended, far in the future for those that go on;
-    ``is_over`` says whether it came to a fixed amount. Both have shape (n_instruments,).
+    Attributes
+    ----------
+    bars, venue : Bars, Venue
+        Prices in continuous units, and what is known of each instrument.
+    steps : tuple of FactorSteps
+        Factors of each instrument.
+    as_of_day : int
+        The day, since 1970-01-01.
+    ended_day : ndarray of int, shape (n_instruments,)
+        When an instrument ended, far in the future for those that go on.
+    known_day : ndarray of int, shape (n_instruments,)
+        The last day with a row in the file, a session or not; far in the past without any.
+    aside : tuple of ndarray of int
+        Days of rows of each instrument that were left aside, rising.
+    halts : tuple of ndarray of int, shape (k, 2)
+        First day of each halt and the day trading resumed.
+    doubts : Doubts or None
+        Prices in query, None where there are none.
     """
 
     bars: Bars
@@ -78,12 +91,50 @@ class Market:
     steps: tuple[FactorSteps, ...]
     as_of_day: int
     ended_day: IntArray
-    is_over: BoolArray
+    known_day: IntArray
+    aside: tuple[IntArray, ...]
+    halts: tuple[IntArray, ...]
+    doubts: Doubts | None = None
+
+    @property
+    def is_over(self) -> BoolArray:
+        """Whether each instrument came to a fixed amount, shape (n_instruments,)."""
+        return self.bars.over
 
     @cached_property
     def has_endings(self) -> bool:
         """Whether any instrument has ended."""
         return bool((self.ended_day < NEVER).any())
+
+    @cached_property
+    def longest_gap(self) -> int:
+        """The most days from a session to the next one, or to the last row of a file."""
+        tails = np.where(self.bars.last_day > -FAR // 2, self.known_day - self.bars.last_day, 0)
+        return max(self.bars.longest_gap, int(tails.max(initial=0)))
+
+    @cached_property
+    def halted(self) -> IntArray:
+        """The numbers of the instruments that were ever halted."""
+        return np.flatnonzero([len(spans) > 0 for spans in self.halts]).astype(np.int64)
+
+    def is_halted(self, instrument: IntArray, day: IntArray) -> BoolArray:
+        """Return where trading was halted on a day that has passed, shape (n,)."""
+        result = np.zeros(len(day), dtype=bool)
+        for number in self.halted:
+            rows = np.flatnonzero((instrument == number) & (day <= self.as_of_day))
+            result[rows] = days_in(self.halts[number], day[rows])
+        return result
+
+    def halts_between(
+        self, instrument: IntArray, after: IntArray, until: IntArray
+    ) -> BoolArray:
+        """Return where a halt lies on any day later than one and no later than another."""
+        result = np.zeros(len(instrument), dtype=bool)
+        for number in self.halted:
+            rows = np.flatnonzero(instrument == number)
+            for begin, resumed in self.halts[number]:
+                result[rows] |= (begin <= until[rows]) & (resumed > after[rows] + 1)
+        return result
 
     def level_factor(self, instrument: IntArray, day: IntArray) -> FloatArray:
         """Return continuous price over a price stated on that day, shape (n,)."""
@@ -147,21 +198,78 @@ def build_market(
         symbol: [one for one in by_symbol[symbol] if one.effective <= as_of]
         for symbol in symbols
     }
+    halts = tuple(halts_of(by_symbol[symbol], today=today) for symbol in symbols)
+    rows = {
+        symbol: _traded(histories[symbol], spans)
+        for symbol, spans in zip(symbols, halts, strict=True)
+        if symbol in histories
+    }
     columns = {
-        symbol: _columns(histories.get(symbol), step, kind, known[symbol], today)
+        symbol: _columns(rows.get(symbol), step, kind, known[symbol], today)
         for symbol, step, kind in zip(symbols, steps, kinds, strict=True)
     }
     found = {symbol: ending_of(known[symbol], today=today) for symbol in symbols}
     endings = {symbol: one for symbol, one in found.items() if one is not None}
     columns = with_endings(columns, endings, dict(zip(symbols, steps, strict=True)))
+    over = are_over(symbols, endings)
+    bars = concatenate_bars(
+        symbols,
+        [columns[one] | {"over": is_over} for one, is_over in zip(symbols, over, strict=True)],
+    )
+    venue = _venue(instruments, kinds == "total-return", codebook)
+    right = _settled_sessions(bars, rows, halts, endings)
     return Market(
-        concatenate_bars(symbols, [columns[symbol] for symbol in symbols]),
-        _venue(instruments, kinds == "total-return", codebook),
+        bars,
+        venue,
         steps,
         today,
         ended_days(symbols, endings),
-        are_over(symbols, endings),
+        np.array([_last_row(histories.get(one), today) for one in symbols], dtype=np.int64),
+        tuple(rows[one].aside if one in rows else _NO_DAYS for one in symbols),
+        halts,
+        find_doubts(bars, venue.additive, right, codebook.settlement),
     )
+
+
+_NO_DAYS = np.zeros(0, dtype=np.int64)
+
+
+def _traded(history: PriceHistory, halts: IntArray) -> PriceHistory:
+    """Return the rows of a history outside its halts."""
+    inside = days_in(halts, history.day)
+    return keep_rows(history, ~inside) if inside.any() else history
+
+
+def _last_row(history: PriceHistory | None, today: int) -> int:
+    """Return the last day up to today that has a row, far in the past without any."""
+    if history is None:
+        return -FAR
+    days = np.concatenate((history.day, history.aside))
+    return int(days[days <= today].max(initial=-FAR))
+
+
+def _settled_sessions(
+    bars: Bars,
+    rows: Mapping[str, PriceHistory],
+    halts: Sequence[IntArray],
+    endings: Mapping[str, Ending],
+) -> IntArray:
+    """Return the sessions that are in no query.
+
+    A person has confirmed them, trading resumed on them, or terms set their price.
+    """
+    found: list[int] = []
+    for number, symbol in enumerate(bars.symbols):
+        own = bars.day[bars.offsets[number] : bars.offsets[number + 1]]
+        inside = np.zeros(len(own), dtype=bool)
+        if symbol in rows and len(rows[symbol].confirmed):
+            inside = np.isin(own, rows[symbol].confirmed)
+        for day in days_of_terms(symbol, endings):
+            inside[np.flatnonzero(own >= day)[:2]] = True
+        for resumed in halts[number][:, 1]:
+            inside[np.flatnonzero(own >= resumed)[:1]] = True
+        found += (bars.offsets[number] + np.flatnonzero(inside)).tolist()
+    return np.array(found, dtype=np.int64)
 
 
 def _columns(

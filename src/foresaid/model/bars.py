@@ -43,6 +43,8 @@ class Bars:
         Total-return level, in any unit; the close where it is not known.
     total_known : ndarray of bool, shape (n_instruments,)
         Whether ``total`` holds more than the close.
+    over : ndarray of bool, shape (n_instruments,)
+        Whether the instrument came to a fixed amount, so that its last price holds for good.
     """
 
     symbols: tuple[str, ...]
@@ -55,6 +57,7 @@ class Bars:
     factor: FloatArray
     total: FloatArray
     total_known: BoolArray
+    over: BoolArray
 
     @cached_property
     def _table(self) -> tuple[IntArray, IntArray, IntArray, IntArray]:
@@ -175,6 +178,8 @@ class Windows:
     legs : ndarray of int, shape (n, n_legs), or None
         Numbers of the other instruments that a claim names, -1 for none; None where no claim
         names any.
+    until : ndarray of int, shape (n,), or None
+        Day on which the other instruments are read; None where it is that of ``last``.
     """
 
     floor: IntArray
@@ -183,6 +188,7 @@ class Windows:
     last: IntArray
     additive: BoolArray
     legs: IntArray | None = None
+    until: IntArray | None = None
 
     def __len__(self) -> int:
         return len(self.reference)
@@ -205,7 +211,7 @@ def concatenate_bars(symbols: Sequence[str], columns: Sequence[dict[str, Any]]) 
         Names, in order.
     columns : sequence of dict, length n
         Arrays ``day, high, low, close, has_range, factor, total`` of each instrument, and the
-        flag ``total_known``.
+        flags ``total_known`` and ``over`` (false where it is missing).
     """
     lengths = [len(history["day"]) for history in columns]
 
@@ -224,4 +230,5 @@ def concatenate_bars(symbols: Sequence[str], columns: Sequence[dict[str, Any]]) 
         factor=flat("factor", np.float64),
         total=flat("total", np.float64),
         total_known=np.array([bool(h["total_known"]) for h in columns], dtype=np.bool_),
+        over=np.array([bool(h.get("over", False)) for h in columns], dtype=np.bool_),
     )

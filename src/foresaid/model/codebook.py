@@ -70,13 +70,23 @@ class InstrumentKind:
 
 @dataclass(frozen=True, slots=True)
 class SettlementRules:
-    """Numbers of the settlement conventions; hours are minutes after midnight."""
+    """Numbers of the settlement conventions; hours are minutes after midnight.
+
+    The ``query`` fields say which prices a person has to look at (docs/settlement.md).
+    """
 
     tolerance: float
     day_only: Literal["before-close", "after-close"]
     roll_back_days: int
     default_opens: int
     default_closes: int
+    query_moves: float
+    query_sessions: int
+    query_minimum: int
+    query_part: float
+    query_points: float
+    query_part_short: float
+    query_points_short: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -268,6 +278,13 @@ def _settlement(node: Node) -> SettlementRules:
         roll_back_days=node.integer("roll_back_days", low=1, high=60),
         default_opens=node.clock("default_opens"),
         default_closes=node.clock("default_closes"),
+        query_moves=node.number("query_moves", low=1.0, high=1e6),
+        query_sessions=node.integer("query_sessions", low=2, high=10_000),
+        query_minimum=node.integer("query_minimum", low=1, high=10_000),
+        query_part=node.number("query_part", low=1e-6, high=1e6),
+        query_points=node.number("query_points", low=1e-9, high=1e6),
+        query_part_short=node.number("query_part_short", low=1e-6, high=1e6),
+        query_points_short=node.number("query_points_short", low=1e-9, high=1e6),
     )
 
 

@@ -8,7 +8,7 @@ from foresaid.claims.registry import NOT_A_CALL
 from foresaid.ingest.faults import nearest
 from foresaid.ledger import queries
 from foresaid.model.errors import UsageError
-from foresaid.pipeline.scoring import listed_calls, stale_parts
+from foresaid.pipeline.groups import listed_calls, stale_parts
 from foresaid.settle.outcomes import alternate_names
 
 if TYPE_CHECKING:
@@ -23,7 +23,7 @@ CALL_COLUMNS = (
     "reference_price", "first_session", "deadline", "sessions", "deadline_session",
     "decided_session", "decided_price", "move_frac", "move_points", "measured", "chance",
     "chance_model", "chance_windows", "chance_hits", "chance_disjoint",
-    "chance_volatility", "chance_modelled", "flags",
+    "chance_volatility", "chance_modelled", "loss", "loss_reference", "covered", "flags",
     *(f"alt_{name}" for name in alternate_names()),
     "claim_typed", "horizon_typed", "currency", "quote", "outlet", "link", "collection",
     "coder", "coded_at", "revises", "copies", "withdrawn_at",

@@ -60,6 +60,7 @@ def _settled_with(
         deadline_day,
         sessions,
         None if calls.times.legs is None else calls.times.legs[rows],
+        None if calls.times.stated_day is None else calls.times.stated_day[rows],
     )
     claims = calls.claims
     own = CallClaims(

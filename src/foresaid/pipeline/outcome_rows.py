@@ -16,6 +16,7 @@ from foresaid.settle.outcomes import HIT, NONE
 if TYPE_CHECKING:
     from foresaid.chance.per_call import Chances
     from foresaid.model.bars import BoolArray, FloatArray, IntArray
+    from foresaid.pipeline.losses import Losses
     from foresaid.pipeline.world import CodedCalls, World
     from foresaid.settle.outcomes import Outcomes
 
@@ -31,6 +32,7 @@ FLAGS = (
     "hours assumed",
     "no highs and lows",
     "price return only",
+    "trading halted",
     "instrument ended",
     "currency converted",
 )
@@ -44,6 +46,7 @@ class Judgement:
     calls: CodedCalls
     outcomes: Outcomes
     chances: Chances
+    losses: Losses
 
 
 def outcome_rows(found: Judgement) -> pd.DataFrame:
@@ -95,6 +98,9 @@ def outcome_columns() -> tuple[str, ...]:
         *_COUNTS,
         "chance_volatility",
         "chance_modelled",
+        "loss",
+        "loss_reference",
+        "covered",
     )
 
 
@@ -139,6 +145,9 @@ def _chance(found: Judgement) -> dict[str, Column]:
         "chance_disjoint": known.disjoint.tolist(),
         "chance_volatility": _numbers(known.deviation, has_window),
         "chance_modelled": _numbers(known.modelled, has_window),
+        "loss": _numbers(found.losses.loss, has_window),
+        "loss_reference": _numbers(found.losses.reference, has_window),
+        "covered": _numbers(found.losses.covered, has_window),
     }
 
 
@@ -200,6 +209,7 @@ def _flags(found: Judgement) -> Column:
         "hours assumed": timed & ~hours_known,
         "no highs and lows": _lacks_range(found),
         "price return only": _lacks_total(found),
+        "trading halted": _was_halted(found),
         "instrument ended": _has_ended(found),
         "currency converted": _is_converted(found),
     }
@@ -219,10 +229,25 @@ def _disagrees(outcomes: Outcomes) -> BoolArray:
 
 def _is_converted(found: Judgement) -> BoolArray:
     """Return where prices were converted to the currency of the call."""
-    symbols = np.array([one.symbol for one in found.world.instruments], dtype=object)
-    judged = symbols[found.calls.times.instrument]
-    result: BoolArray = judged != found.calls.frame["instrument"].to_numpy(dtype=object)
+    result: BoolArray = found.calls.times.instrument >= found.world.n_own
+    if found.calls.times.legs is not None:
+        result |= (found.calls.times.legs >= found.world.n_own).any(axis=1)
     return result
+
+
+def _was_halted(found: Judgement) -> BoolArray:
+    """Return where a halt lies between the reference session and the deadline."""
+    market, resolved = found.world.market, found.outcomes.resolved
+    times, windows = found.calls.times, resolved.windows
+    after, last = _at(market.bars.day, windows.reference), _at(market.bars.day, windows.last)
+    until = np.where(times.sessions > 0, last, np.minimum(times.deadline_day, market.as_of_day))
+    begun = (resolved.matured | resolved.running) & np.isfinite(after) & np.isfinite(until)
+    halted = np.zeros(len(begun), dtype=bool)
+    rows = np.flatnonzero(begun)
+    halted[rows] = market.halts_between(
+        times.instrument[rows], after[rows].astype(np.int64), until[rows].astype(np.int64)
+    )
+    return halted
 
 
 def _has_ended(found: Judgement) -> BoolArray:

@@ -15,6 +15,7 @@ from foresaid.chance.per_call import chances
 from foresaid.ledger import queries, writes
 from foresaid.model.errors import UsageError
 from foresaid.pipeline.conditions import with_conditions
+from foresaid.pipeline.losses import losses_of
 from foresaid.pipeline.other_horizons import with_other_horizons
 from foresaid.pipeline.outcome_rows import Judgement, outcome_rows, screened_out_rows
 from foresaid.pipeline.world import coded_calls, load_world, wanted_currencies
@@ -67,7 +68,14 @@ def judge(
         calls.times, calls.claims, world.market, calls.inverse, codebook.settlement
     )
     outcomes = with_other_horizons(outcomes, calls, world, codebook)
-    return Judgement(world, calls, outcomes, _chances(world, calls, outcomes, codebook))
+    starts = starts_of(world, calls, outcomes)
+    return Judgement(
+        world,
+        calls,
+        outcomes,
+        _chances(world, calls, outcomes, starts, codebook),
+        losses_of(calls.claims.kind, outcomes, starts, world.market, codebook),
+    )
 
 
 def settle_ledger(
@@ -108,6 +116,7 @@ def settle_ledger(
         "vintage": vintage,
         "last_call": last_call,
         "last_decision": queries.last_decision(ledger),
+        "last_confirmation": queries.last_confirmation(ledger),
         "program": __version__,
     }
     latest = queries.latest_settlement(ledger)
@@ -152,6 +161,7 @@ def _differences(latest: queries.Settlement, header: dict[str, Any]) -> str:
         "vintage": "other prices or actions",
         "last_call": "new calls",
         "last_decision": "a decision about its condition",
+        "last_confirmation": "prices confirmed by a person",
         "program": "another program version",
     }
     changed = [name for name in words if str(getattr(latest, name)) != str(header[name])]
@@ -188,18 +198,13 @@ def _groups(calls: CodedCalls, rows: BoolArray) -> list[tuple[Kind, IntArray]]:
     return [(group.kind, group.rows) for group in found]
 
 
-def _chances(
-    world: World, calls: CodedCalls, outcomes: Outcomes, codebook: Codebook
-) -> Chances:
-    """Return the chance of every call whose window has begun and is sound."""
-    resolved, bars = outcomes.resolved, world.market.bars
-    windows = resolved.windows
-    fit = (resolved.matured | resolved.running) & (outcomes.result != "void")
-    fit &= np.isfinite(outcomes.marks[:, 0])
+def starts_of(world: World, calls: CodedCalls, outcomes: Outcomes) -> Starts:
+    """Return what carries the calls to other starts on their instruments."""
+    windows, bars = outcomes.resolved.windows, world.market.bars
     reference_day = bars.day[windows.reference] if len(bars.day) else windows.reference
     in_sessions = calls.times.sessions > 0
     span = np.where(in_sessions, calls.times.sessions, calls.times.deadline_day - reference_day)
-    starts = Starts(
+    return Starts(
         instrument=calls.times.instrument,
         reference=windows.reference,
         span=np.maximum(span, 1),
@@ -209,6 +214,19 @@ def _chances(
         marks=outcomes.marks,
         legs=calls.times.legs,
     )
+
+
+def _chances(
+    world: World, calls: CodedCalls, outcomes: Outcomes, starts: Starts, codebook: Codebook
+) -> Chances:
+    """Return the chance of every call whose window has begun and is sound."""
+    resolved = outcomes.resolved
+    fit = (resolved.matured | resolved.running) & (outcomes.result != "void")
+    fit &= np.isfinite(outcomes.marks[:, 0])
     return chances(
-        _groups(calls, fit), bars, starts, codebook.chance, codebook.settlement.tolerance
+        _groups(calls, fit),
+        world.market.bars,
+        starts,
+        codebook.chance,
+        codebook.settlement.tolerance,
     )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from foresaid.claims.phrases import print_number
+from foresaid.claims.numbers import print_number
 
 if TYPE_CHECKING:
     from foresaid.model.records import Action

@@ -15,8 +15,9 @@ from foresaid.ledger import queries
 from foresaid.model.codebook import parse_codebook
 from foresaid.model.days import day_of
 from foresaid.model.errors import UsageError
+from foresaid.pipeline.confirming import describe_query, queried_sessions
+from foresaid.pipeline.groups import listed_calls
 from foresaid.pipeline.listing import CALL_COLUMNS
-from foresaid.pipeline.scoring import listed_calls
 from foresaid.pipeline.settling import judge
 from foresaid.pipeline.trace_words import action_text, clock_text, price_text
 
@@ -73,6 +74,10 @@ def trace_call(ledger: Ledger, ref: str) -> Trace:
     if row["given"] and queries.last_decision(ledger) != settlement.last_decision:
         raise UsageError(
             "Conditions were decided since the last settlement. Run: foresaid settle"
+        )
+    if queries.last_confirmation(ledger) != settlement.last_confirmation:
+        raise UsageError(
+            "Prices were confirmed since the last settlement. Run: foresaid settle"
         )
     listed = {name: row[name] for name in CALL_COLUMNS}
     alternates = json.loads(row["alternates"] or "{}")
@@ -133,6 +138,7 @@ class _Teller:
             ("actions", self._actions()),
             ("threshold", self._threshold()),
             ("arithmetic", self._arithmetic()),
+            ("prices in query", self._queries()),
             ("result", self._result()),
             ("chance", self._chance()),
             ("flags", row["flags"] or "none"),
@@ -262,14 +268,31 @@ class _Teller:
         ]
         return "; ".join(texts) or "none from statement to deadline but dividends"
 
+    def _queries(self) -> str:
+        """Return the prices in query that the call looks at, or looked back to."""
+        if self.row["reference_session"] is None:
+            return ""
+        found = [
+            f"{one['instrument']} {one['session']}, {one['price']} {price_text(one['value'])} "
+            f"(close {price_text(one['close'])}, the close before "
+            f"{price_text(one['close_before'])})"
+            for position in queried_sessions(self.judged, 0)
+            for one in describe_query(self.judged, position)
+        ]
+        if not found:
+            return ""
+        bearing = "the answer hangs on them" if self.row["reason"] else "the answer is the same"
+        return "; ".join(found) + f"; without them {bearing}"
+
     def _threshold(self) -> str:
         marks = self.judged.outcomes.marks[0]
         if self.row["reference_price"] is None or not np.isfinite(marks[0]):
             return ""
         texts = [
             self._mark_text(i, float(marks[i]))
-            for i, mark in enumerate(self.kind.marks)
-            if self.kind.kernel.bounds or mark.role in ("level", "share")
+            for i, mark in enumerate(self.kind.marks[: len(marks)])
+            if np.isfinite(marks[i])
+            and (self.kind.kernel.bounds or mark.role in ("level", "share"))
         ]
         return "; ".join(texts)
 

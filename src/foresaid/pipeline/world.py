@@ -10,22 +10,23 @@ import numpy as np
 
 from foresaid.claims.binding import quantity_arrays
 from foresaid.claims.phrases import parse_claim
-from foresaid.claims.registry import KINDS
 from foresaid.ledger import queries
 from foresaid.market.clock import local_times
+from foresaid.market.closures import without_stale
 from foresaid.market.currency import (
     convert_actions,
     convert_history,
     converted_name,
     find_conversion,
 )
-from foresaid.market.histories import Market, PriceHistory, build_market
+from foresaid.market.histories import Market, build_market
+from foresaid.model.price_history import PriceHistory
 from foresaid.pipeline.kinds import check_kinds
 from foresaid.settle.outcomes import CallClaims
 from foresaid.settle.windows import CallTimes
 
 if TYPE_CHECKING:
-    from collections.abc import Collection
+    from collections.abc import Collection, Sequence
     from datetime import date
 
     import pandas as pd
@@ -36,19 +37,29 @@ if TYPE_CHECKING:
     from foresaid.model.codebook import Codebook
     from foresaid.model.records import Action, Instrument
 
-MAX_QUANTITIES = max(len(kind.number_slots) for kind in KINDS.values())
+NO_DAYS = np.zeros(0, dtype=np.int64)
 OTHER_CURRENCY = "no pair converts the instrument's prices to the stated currency"
-OTHER_CURRENCIES = "compared with an instrument in another currency"
+OTHER_CURRENCIES = "no pair converts the prices of a compared instrument"
 
 
 @dataclass(frozen=True)
 class World:
-    """The market with the instruments in the order of its numbers."""
+    """The market with the instruments in the order of its numbers.
+
+    The first ``n_own`` are those of the ledger, the others their prices in other currencies.
+    """
 
     market: Market
     instruments: tuple[Instrument, ...]
     number: dict[str, int]
     actions: tuple[Action, ...]
+    n_own: int
+
+    def symbol_of(self, number: int) -> str:
+        """Return the ledger's symbol of an instrument, whatever currency it is priced in."""
+        one = self.instruments[number]
+        ending = converted_name("", one.currency) if number >= self.n_own else ""
+        return one.symbol.removesuffix(ending)
 
 
 @dataclass(frozen=True)
@@ -75,6 +86,7 @@ def load_world(
     instrument's own; those for which the ledger has no pair of currencies are left out.
     """
     instruments = [one for _, one in queries.instruments(ledger).values()]
+    n_own = len(instruments)
     check_kinds(instruments, codebook)
     histories = _histories(ledger, vintage)
     actions = queries.actions(ledger, vintage=vintage)
@@ -100,7 +112,7 @@ def load_world(
         series[name] = series.get(symbol, "raw")
     market = build_market(instruments, histories, actions, series, codebook, as_of=as_of)
     number = {one.symbol: i for i, one in enumerate(instruments)}
-    return World(market, tuple(instruments), number, tuple(actions))
+    return World(market, tuple(instruments), number, tuple(actions), n_own)
 
 
 def _with_successors(
@@ -121,21 +133,54 @@ def _histories(ledger: Ledger, vintage: int) -> dict[str, PriceHistory]:
     """Return the price history of every instrument that has one, by symbol."""
     rows = queries.prices(ledger, vintage=vintage)
     symbols = {key: symbol for symbol, (key, _) in queries.instruments(ledger).items()}
+    confirmed = confirmed_days(rows, queries.confirmations(ledger))
     bounds = np.flatnonzero(np.diff(rows.instrument, prepend=-1, append=-1))
     histories = {}
     for begin, end in pairwise(bounds):
         own = slice(int(begin), int(end))
-        histories[symbols[int(rows.instrument[begin])]] = PriceHistory(
-            rows.day[own], rows.high[own], rows.low[own], rows.close[own], rows.total[own]
+        history = PriceHistory(
+            rows.day[own],
+            rows.high[own],
+            rows.low[own],
+            rows.close[own],
+            rows.total[own],
+            rows.volume[own],
+            confirmed=confirmed.get(int(rows.instrument[begin]), NO_DAYS),
         )
+        histories[symbols[int(rows.instrument[begin])]] = without_stale(history)
     return histories
+
+
+def confirmed_days(
+    rows: queries.PriceRows, confirmations: Sequence[queries.Confirmation]
+) -> dict[int, IntArray]:
+    """Return the days of each instrument whose prices are still those that were confirmed."""
+    found: dict[int, set[int]] = {}
+    for one in confirmations:
+        begin, end = np.searchsorted(rows.instrument, [one.instrument, one.instrument + 1])
+        at = begin + int(np.searchsorted(rows.day[begin:end], one.day))
+        if at >= end or rows.day[at] != one.day:
+            continue
+        held = (float(rows.high[at]), float(rows.low[at]), float(rows.close[at]))
+        same = all(
+            a == b or (b is None and np.isnan(a))
+            for a, b in zip(held, (one.high, one.low, one.close), strict=True)
+        )
+        if same:
+            found.setdefault(one.instrument, set()).add(one.day)
+    return {key: np.array(sorted(days), dtype=np.int64) for key, days in found.items()}
 
 
 def wanted_currencies(ledger: Ledger, frame: pd.DataFrame) -> set[tuple[str, str]]:
     """Return the instruments that calls speak of in a currency other than their own."""
     own = {symbol: one.currency for symbol, (_, one) in queries.instruments(ledger).items()}
-    stated = zip(frame["instrument"], frame["currency"], strict=True)
-    return {(s, c) for s, c in set(stated) if c and own[s] and own[s] != c}
+    wanted: set[tuple[str, str]] = set()
+    stated = zip(frame["instrument"], frame["currency"], frame["claim"], strict=True)
+    for symbol, currency, phrase in set(stated):
+        spoken = currency or own[symbol]
+        legs = {symbol, *parse_claim(phrase).others}
+        wanted |= {(leg, spoken) for leg in legs if spoken and own[leg] not in ("", spoken)}
+    return wanted
 
 
 def coded_calls(frame: pd.DataFrame, world: World) -> CodedCalls:
@@ -165,27 +210,34 @@ def _claims(
     """Return what the calls say and what they compare; each distinct phrase is read once."""
     phrases, codes = np.unique(frame["claim"].to_numpy(dtype=str), return_inverse=True)
     parsed = [parse_claim(str(phrase)) for phrase in phrases]
-    values, units = quantity_arrays(parsed, MAX_QUANTITIES)
+    values, units = quantity_arrays(parsed)
     kinds = np.array([claim.kind for claim in parsed], dtype=object)
-    legs = _legs(parsed, world)
+    legs = _legs(parsed, codes, instruments, world)
     blocked = _blocked(frame, instruments)
     if legs is not None:
-        legs = legs[codes]
         blocked[(blocked == "") & _differ_in_currency(instruments, legs, world)] = (
             OTHER_CURRENCIES
         )
     return CallClaims(kinds[codes], values[codes], units[codes], blocked), legs
 
 
-def _legs(parsed: list[Claim], world: World) -> IntArray | None:
-    """Return the numbers of the other instruments of each phrase, None where there is none."""
+def _legs(
+    parsed: list[Claim], codes: IntArray, instruments: list[Instrument], world: World
+) -> IntArray | None:
+    """Return the numbers of the other instruments of each call, None where there is none.
+
+    Each is taken in the currency of the call's own instrument where the world has it.
+    """
     width = max((len(claim.others) for claim in parsed), default=0)
     if not width:
         return None
-    legs = np.full((len(parsed), width), -1, dtype=np.int64)
-    for row, claim in enumerate(parsed):
-        for column, symbol in enumerate(claim.others):
-            legs[row, column] = world.number[symbol]
+    legs = np.full((len(codes), width), -1, dtype=np.int64)
+    has_legs = np.array([bool(claim.others) for claim in parsed])
+    for row in np.flatnonzero(has_legs[codes]):
+        currency = instruments[row].currency
+        for column, symbol in enumerate(parsed[codes[row]].others):
+            converted = world.number.get(converted_name(symbol, currency))
+            legs[row, column] = world.number[symbol] if converted is None else converted
     return legs
 
 
@@ -196,7 +248,8 @@ def _differ_in_currency(
     quoted = np.array([*(one.currency for one in world.instruments), ""], dtype=object)
     own = np.array([one.currency for one in instruments], dtype=object)[:, None]
     theirs = quoted[legs]
-    result: BoolArray = np.any((legs >= 0) & (theirs != own), axis=1)
+    differ = (theirs != own) & (theirs != "") & (own != "")
+    result: BoolArray = np.any((legs >= 0) & differ, axis=1)
     return result
 
 

@@ -175,6 +175,35 @@ BESIDE_GUIDE = (
 )
 
 
+def error_columns(keys: Sequence[str]) -> list[Column]:
+    """Return the columns of the table of forecast errors for groups by ``keys``."""
+    return [
+        *_keys(keys),
+        Column("forecast", _text("forecast"), "left"),
+        Column("right", lambda row: f"{row['hits']} of {row['n']}"),
+        Column("in %", lambda row: fraction(row["hit_rate"])),
+        Column("stated", lambda row: fraction(row["stated_rate"])),
+        Column("at any time", lambda row: _text_of(row["any_time_hits"])),
+        Column("covered", lambda row: fraction(row["covered"])),
+        Column("loss", lambda row: decimal(row["loss"], digits=4)),
+        Column("of no skill", lambda row: decimal(row["loss_reference"], digits=4)),
+        Column("saved", lambda row: decimal(row["skill"], digits=2)),
+    ]
+
+
+def _text_of(value: object) -> str:
+    return "–" if value is None else str(value)
+
+
+ERROR_GUIDE = (
+    "right: reached at the deadline, or inside the range, the outer quantiles, the bin given "
+    "most. stated: mean probability of that. covered: median share of the way to a target. "
+    "loss: mean error of a target, interval score, pinball loss (parts of the reference price, "
+    "points for yields) or ranked probability score; of no skill: that of no change or of past "
+    "moves, on the calls that have it; saved: how much of it the forecaster saves, 1 is best."
+)
+
+
 def change_columns() -> list[Column]:
     """Return the columns of the list of changed results."""
     names = ("ref", "before", "after", "because")

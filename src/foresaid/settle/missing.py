@@ -11,6 +11,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from foresaid.market.closures import days_in
+
 if TYPE_CHECKING:
     from foresaid.market.histories import Market
     from foresaid.model.bars import BoolArray, IntArray
@@ -53,7 +55,34 @@ def lacks_session(
         due = np.minimum(times.deadline_day[rows], market.ended_day[times.instrument[rows]] - 1)
         latest = days[np.maximum(np.searchsorted(days, due, side="right") - 1, 0)]
         result[rows] |= dated & (latest > last)
+        for row in rows[result[rows] & _leaves_aside(market, times.instrument[rows])]:
+            at = np.searchsorted(rows, row)
+            gaps = [
+                (int(reference_day[row]), int(own[at])),
+                (int(last[at]) + 1, int(due[at]) + 1),
+            ]
+            number = int(times.instrument[row])
+            result[row] = any(
+                _lacks_any(market, number, days, *gap) for gap in gaps[: 1 + dated[at]]
+            )
     return result
+
+
+def _leaves_aside(market: Market, instrument: IntArray) -> BoolArray:
+    """Return which instruments have rows that were left aside, or halts; shape (n,)."""
+    some = [
+        len(days) + len(spans) > 0
+        for days, spans in zip(market.aside, market.halts, strict=True)
+    ]
+    result: BoolArray = np.array(some, dtype=bool)[instrument]
+    return result
+
+
+def _lacks_any(market: Market, number: int, days: IntArray, begin: int, end: int) -> bool:
+    """Return whether a day of the market in a gap is neither left aside nor in a halt."""
+    inside = days[(days >= begin) & (days < end)]
+    known = np.isin(inside, market.aside[number]) | days_in(market.halts[number], inside)
+    return bool((~known).any())
 
 
 def _trading_days(market: Market, code: str) -> IntArray:

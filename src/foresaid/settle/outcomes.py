@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from foresaid.claims.binding import bind
+from foresaid.claims.paths import LOOK_BACK
 from foresaid.claims.registry import KINDS
 from foresaid.claims.relative import NO_RETURN
 from foresaid.settle.missing import MISSING, lacks_session
@@ -24,14 +25,15 @@ if TYPE_CHECKING:
     from foresaid.claims.kernels import Judged, Kernel
     from foresaid.claims.kind import Kind
     from foresaid.market.histories import Market
-    from foresaid.model.bars import BoolArray, FloatArray, IntArray, Windows
+    from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray, Windows
     from foresaid.model.codebook import SettlementRules
     from foresaid.settle.windows import CallTimes, Resolved
 
 CHUNK = 16_384  # windows judged at once: small enough to stay in the processor's cache
 NONE, MISS, HIT = -1, 0, 1
 CLOSE_BEFORE = "close_before"
-ENDED_LEG = "an instrument of the comparison ended, which comparisons do not handle yet"
+UNCOUNTABLE = "sessions cannot be counted on an instrument that has ended"
+PRICE_QUERY = "a price in query decides it"
 SHORTER, LONGER = "shorter", "longer"  # of imputed horizons, filled in by the pipeline
 
 
@@ -78,7 +80,7 @@ class Outcomes:
         Why a call is void or open, empty otherwise.
     resolved : Resolved
         The windows.
-    marks : ndarray of float, shape (n, 2)
+    marks : ndarray of float, shape (n, n_marks)
         Thresholds relative to the reference, NaN where there is none.
     decided : ndarray of int
         Position of the session that decided, -1 where nothing did.
@@ -167,9 +169,8 @@ def settle_calls(
         if group.kind.direction != "by level":
             work.direction[group.rows] = group.kind.direction
         if group.kind.kernel.needs_legs:
-            ended = np.zeros(len(order), dtype=bool)
-            ended[group.rows] = _legs_ended(times, market)[group.rows]
-            work.leave(ended, "open", ENDED_LEG)
+            endless = _uncountable(times, resolved, market, group.rows)
+            work.leave(endless, "void", UNCOUNTABLE)
             work.leave(_legs_lack_returns(times, market, group.rows), "void", NO_RETURN)
         if any(mark.role == "level" for mark in group.kind.marks):
             barred = np.zeros(len(order), dtype=bool)
@@ -190,14 +191,15 @@ def _legs_lack_returns(times: CallTimes, market: Market, rows: IntArray) -> Bool
     return result
 
 
-def _legs_ended(times: CallTimes, market: Market) -> BoolArray:
-    """Return where an instrument of a comparison came to a fixed amount before the deadline."""
-    due = np.where(times.sessions > 0, market.as_of_day, times.deadline_day)
-    ended = np.where(market.is_over, market.ended_day, np.iinfo(np.int64).max)
-    result: BoolArray = ended[times.instrument] <= due
-    if times.legs is not None:
-        last = np.append(ended, np.iinfo(np.int64).max)
-        result |= (last[times.legs] <= due[:, None]).any(axis=1)
+def _uncountable(
+    times: CallTimes, resolved: Resolved, market: Market, rows: IntArray
+) -> BoolArray:
+    """Return where a comparison counts sessions beyond the end of its own instrument."""
+    result = np.zeros(len(times.instrument), dtype=bool)
+    number = times.instrument[rows]
+    wanted = resolved.windows.reference[rows] + times.sessions[rows]
+    beyond = wanted > market.bars.last_position[number]
+    result[rows] = (times.sessions[rows] > 0) & market.is_over[number] & beyond
     return result
 
 
@@ -225,7 +227,7 @@ class _Work:
         self.result[np.isin(resolved.reason, VOID_REASONS)] = "void"
         self.reason = np.array(REASONS, dtype=object)[resolved.reason]
         self.is_live = resolved.matured | resolved.running
-        self.marks = np.full((n, 2), np.nan)
+        self.marks = np.full((n, max(2, claims.values.shape[1])), np.nan)
         self.decided = np.full(n, -1, dtype=np.int64)
         self.value = np.full(n, np.nan)
         self.measured = np.full(n, np.nan)
@@ -253,15 +255,50 @@ class _Work:
         judged = kind.kernel.judge(bars, windows, marks, tolerance)
         matured = self.resolved.matured[rows]
         final = matured | judged.final
+        doubtful = final & self._is_doubtful(kind, rows, windows, judged)
+        self.leave_rows(rows[doubtful], PRICE_QUERY, "open")
+        final &= ~doubtful
         self._keep(rows[final], judged, final)
         self._keep_alternates(kind, rows[matured], windows.take(matured), marks[matured])
 
-    def _bind(self, kind: Kind, rows: IntArray, windows: Windows) -> FloatArray:
+    def _is_doubtful(
+        self, kind: Kind, rows: IntArray, windows: Windows, judged: Judged
+    ) -> BoolArray:
+        """Return where prices in query decide: without them the answer is another."""
+        result = np.zeros(len(rows), dtype=bool)
+        doubts = self.market.doubts
+        if doubts is None:
+            return result
+        some = np.flatnonzero(self._meets_query(windows))
+        if len(some):
+            own, matured = windows.take(some), self.resolved.matured[rows[some]]
+            marks = self._bind(kind, rows[some], own, doubts.bars)
+            other = kind.kernel.judge(doubts.bars, own, marks, self.rules.tolerance)
+            stays_open = ~(matured | other.final)
+            result[some] = stays_open | (other.hit != judged.hit[some])
+        return result
+
+    def _meets_query(self, windows: Windows) -> BoolArray:
+        """Return which windows, with what kinds look back to, hold a price in query."""
+        bars, doubts = self.market.bars, self.market.doubts
+        assert doubts is not None
+        count = np.concatenate(([0], np.cumsum(doubts.any)))
+        start = np.maximum(windows.floor, windows.reference - LOOK_BACK)
+        found = count[windows.last + 1] > count[start]
+        if windows.legs is not None:
+            queried = count[bars.offsets[1:]] > count[bars.offsets[:-1]]
+            found |= np.append(queried, False)[windows.legs].any(axis=1)
+        result: BoolArray = found
+        return result
+
+    def _bind(
+        self, kind: Kind, rows: IntArray, windows: Windows, bars: Bars | None = None
+    ) -> FloatArray:
         return bind(
             kind,
             self.claims.values[rows],
             self.claims.units[rows],
-            reference=self.market.bars.close[windows.reference],
+            reference=(bars or self.market.bars).close[windows.reference],
             level_factor=self.level_factor[rows],
             additive=windows.additive,
         )
@@ -277,7 +314,9 @@ class _Work:
         sunk = ~windows.additive & (reference <= 0)
         self.leave_rows(rows[sunk], "the reference price is not above zero")
         unfit = kind.kernel.unsound(self.market.bars, windows, marks, self.rules.tolerance)
-        for mask, reason, result in unfit:
+        for found, reason, result in unfit:
+            # prices that a window still waits for are not missing yet
+            mask = found & self.resolved.matured[rows] if result == "open" else found
             self.leave_rows(rows[mask & ~sunk], reason, result)
             sunk |= mask
         return ~sunk

@@ -16,7 +16,7 @@ from foresaid.model.bars import Windows
 
 if TYPE_CHECKING:
     from foresaid.market.histories import Market
-    from foresaid.model.bars import BoolArray, FloatArray, IntArray
+    from foresaid.model.bars import BoolArray, Calendar, FloatArray, IntArray
     from foresaid.model.codebook import SettlementRules
 
 
@@ -78,7 +78,7 @@ class Resolved:
     rolled_back: BoolArray
 
 
-FINE, NO_REFERENCE, RUNS, NO_DEADLINE_PRICE, EMPTY, SAME_CLOSE = range(6)
+FINE, NO_REFERENCE, RUNS, NO_DEADLINE_PRICE, EMPTY, SAME_CLOSE, HALTED = range(7)
 REASONS = (
     "",
     "no price yet on or after the statement",
@@ -86,8 +86,9 @@ REASONS = (
     "no price at the deadline",
     "the deadline is before the reference session",
     "the deadline close is the reference close",
+    "trading was halted through the whole window",
 )
-VOID_REASONS = (EMPTY, SAME_CLOSE)
+VOID_REASONS = (EMPTY, SAME_CLOSE, HALTED)
 
 
 def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) -> Resolved:
@@ -117,44 +118,105 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         reference + is_session if path_waits is True else reference + is_session * path_waits
     )
     begun = ~is_beyond
+    due = _deadlines(times, market, calendar, reference)
+    sound = (due.last > reference) & due.reached & begun
+    reason, running = np.zeros(len(number), dtype=np.int64), np.zeros(len(number), dtype=bool)
+    if market.longest_gap > rules.roll_back_days:
+        far = _rolled_too_far(due, sound, times, market, rules)
+        sound[far], reason[far] = False, NO_DEADLINE_PRICE
+    odd = np.flatnonzero(~sound & (reason == FINE))
+    if len(odd):
+        reason[odd] = _reasons(odd, due, begun, reference, times, market)
+        end = bars.last_position[number[odd]]
+        running[odd] = begun[odd] & ~due.reached[odd] & (first[odd] <= end)
+        # positions that mean nothing still have to be positions
+        top = max(len(bars.day) - 1, 0)
+        reference[odd] = np.minimum(reference[odd], np.clip(end, floor[odd], None)).clip(
+            max=top
+        )
+        first[odd] = np.minimum(first[odd], due.last[odd])
+    additive = market.venue.additive.take(number)
+    until = _day_of_others(due.last, times, market)
+    windows = Windows(floor, reference, first, due.last, additive, times.legs, until)
+    return Resolved(
+        windows, sound, running, reason, _rolled_back(due.rolled & sound, times, market)
+    )
+
+
+@dataclass(frozen=True)
+class _Deadlines:
+    """Deadline sessions, whether they are known, and whether the day was no session; (n,)."""
+
+    last: IntArray
+    reached: BoolArray
+    rolled: BoolArray
+    halted: BoolArray
+
+
+def _deadlines(
+    times: CallTimes, market: Market, calendar: Calendar, reference: IntArray
+) -> _Deadlines:
+    number = times.instrument
     last, is_due_session, is_due_beyond = calendar.look_up(times.deadline_day)
     reached = ~is_due_beyond
     rolled = is_due_session == 0
     dated = times.sessions == 0
     if is_due_beyond.any():
         _weekends_may_pass(reached, times, market)
-        reached |= market.is_over.take(number)
+        reached |= times.deadline_day <= market.known_day.take(number)
+        reached |= _is_certain(times, market)
+    halted = np.zeros(len(number), dtype=bool)
+    if len(market.halted):
+        halted = market.is_halted(number, times.deadline_day) & dated
+        reached |= halted
     if not dated.all():
-        end = bars.last_position[number]
+        end = market.bars.last_position[number]
         last = np.where(dated, last, reference + times.sessions)
-        reached = np.where(dated, reached, (last <= end) | market.is_over[number])
+        reached = np.where(dated, reached, (last <= end) | _is_certain(times, market))
         last = np.minimum(last, end)
         rolled &= dated
-    sound = (last > reference) & reached & begun
-    reason, running = np.zeros(len(number), dtype=np.int64), np.zeros(len(number), dtype=bool)
-    if bars.longest_gap > rules.roll_back_days:
-        far = np.flatnonzero(rolled & sound)
-        far = far[times.deadline_day[far] - bars.day[last[far]] > rules.roll_back_days]
-        far = far[~market.is_over[number[far]]]
-        sound[far], reason[far] = False, NO_DEADLINE_PRICE
-    odd = np.flatnonzero(~sound & (reason == FINE))
-    if len(odd):
-        length = last[odd] - reference[odd]
-        state = _State(begun[odd], reached[odd], dated[odd], length, times.deadline_day[odd])
-        reason[odd] = _reasons(state, market)
-        end = bars.last_position[number[odd]]
-        running[odd] = state.begun & ~state.reached & (first[odd] <= end)
-        # positions that mean nothing still have to be positions
-        top = max(len(bars.day) - 1, 0)
-        reference[odd] = np.minimum(reference[odd], np.clip(end, floor[odd], None)).clip(
-            max=top
-        )
-        first[odd] = np.minimum(first[odd], last[odd])
-    additive = market.venue.additive.take(number)
-    windows = Windows(floor, reference, first, last, additive, times.legs)
-    return Resolved(
-        windows, sound, running, reason, _rolled_back(rolled & sound, times, market)
+    return _Deadlines(last, reached, rolled, halted)
+
+
+def _rolled_too_far(
+    due: _Deadlines,
+    sound: BoolArray,
+    times: CallTimes,
+    market: Market,
+    rules: SettlementRules,
+) -> IntArray:
+    """Return the calls whose deadline session lies too long before the deadline."""
+    far = np.flatnonzero(due.rolled & sound & ~due.halted)
+    far = far[times.deadline_day[far] - market.bars.day[due.last[far]] > rules.roll_back_days]
+    result: IntArray = far[~market.is_over[times.instrument[far]]]
+    return result
+
+
+def _is_certain(times: CallTimes, market: Market) -> BoolArray:
+    """Return where no later price can matter, because every leg came to a fixed amount.
+
+    A comparison whose own instrument alone did so waits for the others until its deadline.
+    """
+    certain = market.is_over.take(times.instrument)
+    if times.legs is None or not certain.any():
+        return certain
+    over = np.append(market.is_over, True)  # a leg that is not there
+    due = (times.deadline_day <= market.as_of_day) & (times.sessions == 0)
+    result: BoolArray = certain & (over[times.legs].all(axis=1) | due)
+    return result
+
+
+def _day_of_others(last: IntArray, times: CallTimes, market: Market) -> IntArray | None:
+    """Return the day on which other instruments are read, None where it is that of ``last``."""
+    if times.legs is None or not len(market.bars.day):
+        return None
+    day = market.bars.day[np.clip(last, 0, len(market.bars.day) - 1)]
+    ended = market.ended_day.take(times.instrument)
+    is_fixed = market.is_over.take(times.instrument) & (times.sessions == 0)
+    until: IntArray = np.where(
+        is_fixed & (ended <= times.deadline_day), times.deadline_day, day
     )
+    return until
 
 
 def _rolled_back(rolled: BoolArray, times: CallTimes, market: Market) -> BoolArray:
@@ -164,24 +226,24 @@ def _rolled_back(rolled: BoolArray, times: CallTimes, market: Market) -> BoolArr
     return rolled
 
 
-@dataclass(frozen=True)
-class _State:
-    """What decides why a call is not fit to be judged on its deadline; arrays (n,)."""
-
-    begun: BoolArray
-    reached: BoolArray
-    dated: BoolArray
-    length: IntArray
-    deadline_day: IntArray
-
-
-def _reasons(state: _State, market: Market) -> IntArray:
-    reason = np.full(len(state.begun), NO_DEADLINE_PRICE, dtype=np.int64)
-    reason[~state.reached & (~state.dated | (state.deadline_day > market.as_of_day))] = RUNS
-    reason[state.reached & (state.length == 0)] = SAME_CLOSE
-    reason[state.reached & (state.length < 0)] = EMPTY
-    reason[~state.begun] = NO_REFERENCE
-    reason[~state.begun & state.reached] = EMPTY
+def _reasons(
+    odd: IntArray,
+    due: _Deadlines,
+    begun: BoolArray,
+    reference: IntArray,
+    times: CallTimes,
+    market: Market,
+) -> IntArray:
+    """Return why the calls in these rows cannot be judged on a deadline."""
+    begun, reached = begun[odd], due.reached[odd]
+    length, dated = due.last[odd] - reference[odd], times.sessions[odd] == 0
+    reason = np.full(len(odd), NO_DEADLINE_PRICE, dtype=np.int64)
+    reason[~reached & (~dated | (times.deadline_day[odd] > market.as_of_day))] = RUNS
+    reason[reached & (length == 0)] = SAME_CLOSE
+    reason[reached & (length < 0)] = EMPTY
+    reason[~begun] = NO_REFERENCE
+    reason[~begun & reached] = EMPTY
+    reason[due.halted[odd] & np.isin(reason, (EMPTY, SAME_CLOSE))] = HALTED
     return reason
 
 

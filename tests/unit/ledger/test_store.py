@@ -5,7 +5,7 @@ import sqlite3
 import pytest
 
 from foresaid.ledger import store
-from foresaid.ledger.migrations import _APPEND_ONLY, APPLICATION_ID, MIGRATIONS
+from foresaid.ledger.migrations import APPEND_ONLY, APPLICATION_ID, MIGRATIONS
 from foresaid.ledger.store import GENESIS, Ledger, canonical
 from foresaid.model.errors import LedgerError, UsageError
 
@@ -156,10 +156,10 @@ def test_a_step_that_fails_leaves_the_ledger_as_it_was(path, monkeypatch):
 
 def test_every_table_is_append_only(ledger):
     tables = ledger.db.table_names()
-    assert sorted(_APPEND_ONLY) == sorted(tables)
+    assert sorted(APPEND_ONLY) == sorted(tables)
 
 
-@pytest.mark.parametrize("table", _APPEND_ONLY)
+@pytest.mark.parametrize("table", APPEND_ONLY)
 def test_rows_are_never_changed_or_deleted(ledger, table):
     column = fill(ledger, table)
     before = ledger.db.execute(f'SELECT * FROM "{table}"').fetchall()
@@ -170,7 +170,7 @@ def test_rows_are_never_changed_or_deleted(ledger, table):
     assert ledger.db.execute(f'SELECT * FROM "{table}"').fetchall() == before
 
 
-@pytest.mark.parametrize("table", _APPEND_ONLY)
+@pytest.mark.parametrize("table", APPEND_ONLY)
 def test_tables_refuse_values_of_another_type(ledger, table):
     sql = ledger.scalar("SELECT sql FROM sqlite_master WHERE name = ?", (table,))
     assert "STRICT" in sql.rpartition(")")[2]
@@ -277,3 +277,17 @@ def test_scalars(ledger):
     assert ledger.scalar("SELECT 1, 2") == 1
     assert ledger.scalar("SELECT id FROM load") is None
     assert ledger.scalar("SELECT ?", ("x",)) == "x"
+
+
+def test_a_ledger_of_the_first_schema_is_brought_up(path, monkeypatch):
+    from foresaid.ledger import store
+
+    monkeypatch.setattr(store, "MIGRATIONS", MIGRATIONS[:1])
+    with Ledger.create(path) as old:
+        assert old.scalar("PRAGMA user_version") == 1
+        fill(old, "settlement")
+    monkeypatch.undo()
+    with Ledger.open(path) as opened:
+        assert opened.scalar("PRAGMA user_version") == len(MIGRATIONS)
+        assert opened.scalar("SELECT last_confirmation FROM settlement") == 0
+        assert "loss" in [row[1] for row in columns_of(opened, "outcome")]

@@ -5,8 +5,9 @@ from datetime import date
 import numpy as np
 import pytest
 
-from foresaid.market.histories import PriceHistory, build_market
+from foresaid.market.histories import build_market
 from foresaid.model.codebook import default_codebook
+from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Action, Instrument
 from foresaid.settle.outcomes import CallClaims, settle_calls
 from foresaid.settle.windows import CallTimes

@@ -5,8 +5,9 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from foresaid.market.histories import PriceHistory, build_market, minutes
+from foresaid.market.histories import build_market, minutes
 from foresaid.model.codebook import default_codebook
+from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Action, Instrument
 
 BOOK = default_codebook()

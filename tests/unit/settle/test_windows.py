@@ -9,8 +9,9 @@ from datetime import date, timedelta
 import numpy as np
 import pytest
 
-from foresaid.market.histories import PriceHistory, build_market
+from foresaid.market.histories import build_market
 from foresaid.model.codebook import default_codebook
+from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Instrument
 from foresaid.settle.windows import REASONS, CallTimes, resolve_windows
 
