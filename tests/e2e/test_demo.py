@@ -40,7 +40,7 @@ def ledger(tmp_path_factory):
     path = tmp_path_factory.mktemp("demo") / "demo.foresaid"
     done = invoke("demo", "--ledger", path)
     assert "invented" in done.stderr
-    assert "ahead of the base rate" in done.stdout
+    assert "ahead of chance" in done.stdout
     return path
 
 
@@ -266,7 +266,7 @@ def test_roles_are_found_out(by_forecaster):
     assert by_forecaster["k.illmark"]["hit_rate"] > 0.8
     assert by_forecaster["e.vostrand"]["verdict"] == "not estimable"
     assert by_forecaster["e.vostrand"]["p_base"] < 0.001
-    assert by_forecaster["m.tarrow"]["verdict"] == "ahead of the base rate"
+    assert by_forecaster["m.tarrow"]["verdict"] == "ahead of chance"
     assert by_forecaster["r.sundovar"]["brier_skill"] < 0.0
     assert by_forecaster["p.ambrask"]["brier_skill"] > 0.0
 

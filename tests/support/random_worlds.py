@@ -75,9 +75,9 @@ FEW_GAPS = (0,) * 60 + (1, 1, 2, 9)
 STEPS = (0, 0, 0, 1, 1, -1, -1, 2, -2, 3, -3)
 
 
-def _days(source, n, *, weekends, gaps):
+def _days(source, n, *, weekends, gaps, begin=MONDAY):
     """Return session days with holes."""
-    days, day = [], MONDAY + source.whole(0, 4)
+    days, day = [], begin + source.whole(0, 4)
     while len(days) < n:
         if weekends or (day + 6) % 7 < 5:
             days.append(day)
@@ -96,7 +96,10 @@ def _walk(source, days, *, start, jumps, floor):
         if jumps and source.whole(0, 60) == 60:
             step = source.pick((start // 2, -start // 2, start, start // 3))
         close = max(close + step, floor)
-        high, low = (max(close, kept) + source.pick((0, 0, 1, 2))), close - source.pick((0, 1, 2))
+        high, low = (
+            (max(close, kept) + source.pick((0, 0, 1, 2))),
+            close - source.pick((0, 1, 2)),
+        )
         low = max(low, floor)
         if jumps and source.whole(0, 80) == 80:
             high, low = source.pick(((high + start // 2, low), (high, max(low // 2, floor))))
@@ -169,7 +172,8 @@ def things(source, sizes, *, jumps=True, gaps=GAPS):
             )
         )  # fmt: skip
     if len({thing.currency for thing in found}) > 1 and source.whole(0, 9) < 9:
-        days = _days(source, source.whole(*sizes), weekends=False, gaps=gaps)
+        begin = MONDAY - source.pick((7, 7, 7, 7, -14))  # a pair may come late
+        days = _days(source, sizes[1], weekends=False, gaps=gaps, begin=begin)
         walk = _walk(source, days, start=125, jumps=False, floor=20)
         rows = _rows(source, days, walk, plain=True)
         base, term = source.pick((("KOR", "SEL"), ("SEL", "KOR")))
@@ -201,15 +205,15 @@ def _hundredth(row):
 # ---------------------------------------------------------------------------------- actions
 def with_actions(source, found):
     """Return the instruments in the units of their days, and their actions."""
-    deeds, out = [], []
+    deeds, out, latest = [], [], {}
     shares = [thing for thing in found if thing.symbol.startswith("S")]
-    ended = set()
+    late = any(thing.kind == "pair" and thing.rows[0].day > MONDAY for thing in found)
     for thing in found:
         if thing not in shares or not source.whole(0, 2):
             out.append(thing)
             continue
         own = _steps(source, thing) + _halts(source, thing) + _dividends(source, thing)
-        if source.whole(0, 3) == 3:
+        if source.whole(0, 3) == 3 and not late:  # terms need a rate of their day
             others = [
                 one
                 for one in shares
@@ -217,8 +221,7 @@ def with_actions(source, found):
                 and one.currency == thing.currency
                 and one.series != "total-return"
             ]
-            own += _ending(source, thing, others)
-            ended.add(thing.symbol)
+            own += _ending(source, thing, others, latest)
         end = min((d.day for d in own if d.kind in ENDINGS), default=10**9)
         own = [d for d in own if d.kind in ENDINGS or d.day < end]
         deeds += own
@@ -266,8 +269,9 @@ def _dividends(source, thing):
     ]
 
 
-def _ending(source, thing, others):
-    day = max(_some_day(source, thing), thing.rows[0].day + 1)
+def _ending(source, thing, others, latest):
+    """Return how an instrument ended, after everything that became it."""
+    day = max(_some_day(source, thing), thing.rows[0].day + 1, latest.get(thing.symbol, 0))
     kinds = ["cash-out", "wind-up"] + ["merger"] * 2 * bool(others)
     kind = source.pick(kinds)
     last = next((row.close for row in reversed(thing.rows) if row.day < day), 100.0)
@@ -278,7 +282,9 @@ def _ending(source, thing, others):
         return [Deed(thing.symbol, day, kind, amount=max(amount, 1.0))]
     amount = source.pick((None, None, 3.0))
     ratio = source.pick((1.0, 0.5, 0.3))
-    return [Deed(thing.symbol, day, kind, ratio, amount, source.pick(others).symbol)]
+    into = source.pick(others).symbol
+    latest[into] = max(latest.get(into, 0), day + 1)
+    return [Deed(thing.symbol, day, kind, ratio, amount, into)]
 
 
 def _in_units_of_the_day(thing, deeds):
@@ -715,7 +721,9 @@ def _is_sound(one):
     """Whether every instrument that ended has a price before."""
     begins = {thing.symbol: thing.rows[0].day for thing in one.things if thing.rows}
     return all(
-        begins.get(deed.symbol, deed.day) < deed.day for deed in one.deeds if deed.kind in ENDINGS
+        begins.get(deed.symbol, deed.day) < deed.day
+        for deed in one.deeds
+        if deed.kind in ENDINGS
     )
 
 

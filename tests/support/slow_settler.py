@@ -347,6 +347,10 @@ def hours_of(thing: Thing) -> tuple[int, int]:
     return (opens - 1440 if opens > closes else opens), closes
 
 
+def _iso(day: int) -> str:
+    return date.fromordinal(day).isoformat()
+
+
 def _weekday(day: int) -> int:
     return (day + 6) % 7
 
@@ -438,20 +442,49 @@ class SlowSettler:
     # -------------------------------------------------------------------------------- lines
     def line(self, symbol: str, currency: str, *, clean: bool) -> Line | None:
         """Return the sessions of an instrument in a currency, None without a pair."""
+        currency = currency or self.things[symbol].currency
         key = (symbol, currency, clean)
         if key not in self.lines:
-            own = self.own_line(symbol, clean=clean)
-            thing = self.things[symbol]
-            if currency and currency != thing.currency:
-                own = self.converted(own, thing.currency, currency)
-            self.lines[key] = own
+            self.lines[key] = self.built(symbol, currency, clean=clean)
         return self.lines[key]
+
+    def built(self, symbol: str, currency: str, *, clean: bool) -> Line | None:
+        """Return the sessions of an instrument and of what it became."""
+        have, end = self.things[symbol].currency, self.ending(symbol)
+        pair = self.pair(have, currency)
+        if have != currency and pair is None:
+            return None
+        line = self.own_line(symbol, clean=clean)
+        if pair is not None:
+            line = self.converted(line, pair, have)
+        if end is not None:
+            rate = 1.0 if pair is None else self.rate(pair, have, end.day)
+            self.append_terms(line, end, currency, rate=rate, clean=clean)
+        return line
+
+    def pair(self, have: str, want: str) -> Thing | None:
+        """Return the pair of two currencies."""
+        for thing in self.world.things:
+            if have != want and thing.kind == "pair" and {thing.base, thing.term} == {have, want}:
+                return thing
+        return None
+
+    def rate(self, pair: Thing, have: str, day: int) -> float | None:
+        """Return units of the other currency for one of ``have``, None before the first."""
+        rates = self.line(pair.symbol, "", clean=False)
+        at = last_by(rates, day)
+        if at is None:
+            return None
+        return rates.close[at] if pair.base == have else 1 / rates.close[at]
 
     def own_line(self, symbol: str, *, clean: bool) -> Line:
         """Return the sessions of an instrument in its own currency."""
         thing, end = self.things[symbol], self.ending(symbol)
         line = Line(thing)
-        line.halts = self.halts(symbol)
+        for begin, until in self.halts(symbol):
+            until = min(until, end.day) if end else until  # an ending ends a halt as well
+            if begin < until:
+                line.halts.append((begin, until))
         rows = self.kept_rows(line, end)
         last_unit = self.unit(symbol, thing.rows[-1].day) if thing.rows else 1.0
         for row in rows:
@@ -465,11 +498,10 @@ class SlowSettler:
             line.low.append(row.low * unit if has_range else row.close * unit)
             line.ranged.append(has_range)
             line.unit.append(unit)
-        line.reach = max([*line.day[-1:], *line.stale], default=-1)
+        in_file = [row.day for row in thing.rows if row.day <= self.world.as_of]
+        line.reach = max((day for day in in_file if not end or day < end.day), default=-1)
         self.check_prices(line, clean=clean)
         self.reinvest(line, rows)
-        if end is not None:
-            self.append_terms(line, end, clean=clean)
         return line
 
     def kept_rows(self, line: Line, end: Deed | None) -> list[Row]:
@@ -536,7 +568,9 @@ class SlowSettler:
                         shares *= 1 + amount / line.close[i]
                 line.total.append(shares * line.close[i])
 
-    def append_terms(self, line: Line, end: Deed, *, clean: bool) -> None:
+    def append_terms(
+        self, line: Line, end: Deed, currency: str, *, rate: float | None, clean: bool
+    ) -> None:
         """Let the terms of an ended instrument go on in place of its prices."""
         symbol = line.thing.symbol
         line.ended, unit = end.day, self.unit(symbol, end.day)
@@ -552,14 +586,16 @@ class SlowSettler:
             line.unit.append(unit)
             line.total.append(shares * close * unit)
 
+        cash = (end.amount or 0.0) * (rate or 0.0)
         if end.kind != "merger":
-            add(end.day, end.amount, end.amount, end.amount, ranged=False)
+            if rate is not None:
+                add(end.day, cash, cash, cash, ranged=False)
             line.fixed, line.reach = True, end.day
             return
-        into = self.line(end.into, line.thing.currency, clean=clean)
-        ratio, cash = end.ratio / self.unit(end.into, end.day), end.amount or 0.0
+        into = self.line(end.into, currency, clean=clean)
+        ratio = end.ratio / self.unit(end.into, end.day)
         for i, day in enumerate(into.day):
-            if day < end.day:
+            if day < end.day or rate is None:
                 continue
             worth = ratio * into.close[i] + cash
             if into.total_known and i and day > end.day:
@@ -579,23 +615,13 @@ class SlowSettler:
         line.halts += [(max(a, end.day), b) for a, b in into.halts if b > end.day]
         line.stale |= {day for day in into.stale if day >= end.day}
 
-    def converted(self, line: Line, have: str, want: str) -> Line | None:
-        """Return a line in another currency, None where no pair converts it."""
-        pair = None
-        for thing in self.world.things:
-            if thing.kind == "pair" and {thing.base, thing.term} == {have, want}:
-                pair = thing
-        if pair is None:
-            return None
-        rates = self.line(pair.symbol, "", clean=False)
-        out = replace(
-            line, day=[], high=[], low=[], close=[], ranged=[], unit=[], total=[]
-        )
+    def converted(self, line: Line, pair: Thing, have: str) -> Line:
+        """Return a line in another currency, from the first close of the pair on."""
+        out = replace(line, day=[], high=[], low=[], close=[], ranged=[], unit=[], total=[])
         for i, day in enumerate(line.day):
-            at = last_by(rates, day)
-            if at is None:
+            rate = self.rate(pair, have, day)
+            if rate is None:
                 continue
-            rate = rates.close[at] if pair.base == have else 1 / rates.close[at]
             out.day.append(day)
             out.high.append(line.high[i] * rate)
             out.low.append(line.low[i] * rate)
@@ -611,17 +637,17 @@ class SlowSettler:
         if line.fixed and day >= line.day[-1]:
             return True
         if in_halt(line, day):
-            return day < self.world.as_of
+            return day <= self.world.as_of
         if day <= line.reach:
             return True
-        if line.thing.kind == "coin" or line.reach < 0 or day >= self.world.as_of:
+        if line.thing.kind == "coin" or line.reach < 0 or day > self.world.as_of:
             return False
         return all(_weekday(d) >= 5 for d in range(line.reach + 1, day + 1))
 
     def window(self, line: Line, start: Moment, deadline: int | None, sessions: int) -> Window:
         """Find the sessions that a call is about."""
         opens, closes = hours_of(line.thing)
-        if not line.thing.opens:
+        if (opens, closes) == (0, 1440):  # a time counts like a date alone
             start = Moment(start.day, None)
         found = Window(end=len(line.day) - 1, deadline=deadline)
         for i, day in enumerate(line.day):
@@ -678,7 +704,11 @@ class SlowSettler:
             return
         found.end = last
         far = deadline - line.day[last] > ROLL_BACK
-        if far and not in_halt(line, deadline) and not (line.fixed and last == len(line.day) - 1):
+        if (
+            far
+            and not in_halt(line, deadline)
+            and not (line.fixed and last == len(line.day) - 1)
+        ):
             found.result, found.reason = "open", NO_DEADLINE_PRICE
             return
         found.last = last
@@ -690,7 +720,10 @@ class SlowSettler:
             return False
         spans = []
         if found.reference is not None:
-            spans.append((need, line.day[found.reference] - 1))
+            until = line.day[found.reference] - 1
+            if found.deadline is not None:
+                until = min(until, found.deadline)
+            spans.append((need, until))
         if found.last is not None and found.deadline is not None:
             spans.append((line.day[found.last] + 1, found.deadline))
         own = self.line(line.thing.symbol, "", clean=False)
@@ -717,7 +750,7 @@ class SlowSettler:
         said = read_moment(call.at, zone)
         start = said
         claim = read_claim(call.claim)
-        senseless = self.senseless(thing, claim)
+        senseless = self.senseless(thing, claim, said, call.horizon)
         if senseless:
             return Answer("void", senseless)
         if call.given:
@@ -740,10 +773,15 @@ class SlowSettler:
             answer.flags.add("alternates disagree")
         return answer
 
-    def senseless(self, thing: Thing, claim: Claim) -> str:
+    def senseless(self, thing: Thing, claim: Claim, said: Moment, horizon: str) -> str:
         """Return why a claim has no answer on its instruments whatever the prices."""
         if thing.series == "total-return" and any(not unit for _, unit in claim.numbers):
             return NO_LEVELS
+        if any(self.things[symbol].kind == "yield" for symbol in claim.others):
+            return NO_RETURN
+        end = self.ending(thing.symbol)
+        if claim.others and "session" in horizon and end and end.kind != "merger":
+            return UNCOUNTABLE if end.day < said.day else ""
         return ""
 
     def started(self, call: Said, said: Moment) -> Moment | Answer:
@@ -751,7 +789,7 @@ class SlowSettler:
         what, _, by = call.given.rpartition(" by ")
         zone = self.things[call.symbol].zone
         if what.startswith("fact:"):
-            if call.decision is None:
+            if call.decision is None or call.decision[1][:10] > _iso(self.world.as_of):
                 return Answer("open", UNDECIDED)
             met, at = call.decision
             return read_moment(at, zone) if met else Answer("void", NOT_MET)
@@ -771,8 +809,9 @@ class SlowSettler:
             return Moment(found.decided, None)
         midnight = datetime.fromordinal(found.decided)
         _, closes = hours_of(venue)
-        local = midnight + timedelta(minutes=closes)
-        return at_venue(local.replace(tzinfo=ZoneInfo(venue.zone)), zone)
+        local = midnight + timedelta(minutes=closes - 1)
+        start = at_venue(local.replace(tzinfo=ZoneInfo(venue.zone)), zone)
+        return replace(start, minute=start.minute + 1)  # 24:00 is a time of the day it ends
 
     def judged(
         self,
@@ -840,7 +879,7 @@ class Job:
     def get(self, symbol: str, *, clean: bool) -> Line | None:
         currency = self.call.currency
         if self.compares:
-            currency = currency or self.thing.currency
+            currency = currency or self.thing.currency  # the legs are brought to it as well
         return self.settler.line(symbol, currency, clean=clean)
 
     def is_queried(self) -> bool:
@@ -865,13 +904,14 @@ class Job:
             self.wait_for_legs(line, legs, window)
         answer = self.placed(line, window)
         verdict = Verdict(window.result, window.reason)
-        if window.result == "" or (window.reference is not None and window.result == "open"):
+        begun = window.reference is not None and len(self.path(line, window)) > 0
+        if begun and not window.result:
             verdict = self.judge(line, legs, window, window.reference)
-            if window.result and verdict.result != "void":
-                verdict = Verdict(window.result, window.reason)
         if verdict.result == "open" and not verdict.reason:
             verdict.reason = window.reason
         answer.result, answer.reason = verdict.result, verdict.reason
+        if not verdict.result:
+            answer.result = "open"
         answer.matured = window.last is not None
         if verdict.at is not None and verdict.result in ("hit", "miss"):
             self.tell(answer, line, window, verdict)
@@ -881,17 +921,17 @@ class Job:
 
     def wait_for_legs(self, line: Line, legs: list[Line], window: Window) -> None:
         """A comparison on an ended instrument waits for its deadline day."""
-        if not line.fixed or window.last is None or window.result == "void":
-            return
-        if window.last < len(line.day) - 1:
+        if not line.fixed or window.last not in (None, len(line.day) - 1):
             return
         if window.deadline is None:
-            if window.reference + self.sessions > window.last:
+            left = len(line.day) - 1 - (window.reference or 0)
+            if window.reference is None or self.sessions > left:
                 window.result, window.reason = "void", UNCOUNTABLE
             return
         every = all(leg.fixed for leg in legs)
         if not every and window.deadline >= self.settler.world.as_of:
-            window.result, window.reason = "open", RUNS
+            window.result = "open"
+            window.reason = NO_REFERENCE if window.reference is None else RUNS
 
     def placed(self, line: Line, window: Window) -> Answer:
         """Return an answer with its sessions."""
@@ -923,7 +963,9 @@ class Job:
     def near(self, price: float, mark: float, base: float) -> bool:
         return abs(price - mark) <= TOLERANCE * max(abs(mark), abs(base))
 
-    def beyond(self, price: float, mark: float, side: int, *, strict: bool, base: float) -> bool:
+    def beyond(
+        self, price: float, mark: float, side: int, *, strict: bool, base: float
+    ) -> bool:
         """Whether a price lies on one side of a mark; an equal one does unless strict."""
         if self.near(price, mark, base):
             return not strict
@@ -1050,7 +1092,9 @@ class Job:
         begin = len(line.day) if window.first is None else window.first
         return range(begin, window.end + 1)
 
-    def every_session(self, line: Line, window: Window, base: float, *, closes=False) -> Verdict:
+    def every_session(
+        self, line: Line, window: Window, base: float, *, closes=False
+    ) -> Verdict:
         """Missed by the first session that does not keep the level."""
         marks = self.marks(base)
         for i in self.path(line, window):
@@ -1155,15 +1199,14 @@ class Job:
         if self.additive or any(leg.thing.kind == "yield" for leg in legs):
             return Verdict("void", NO_RETURN)
         begin = [last_by(leg, line.day[reference]) for leg in legs]
-        if any(at is None for at in begin):
+        known = zip(legs, begin, strict=True)
+        if any(at is None or leg.close[at] <= 0 for leg, at in known):
             return Verdict("void", NO_LEG_REFERENCE)
         if window.last is None:
             return Verdict("open")
         until = line.day[window.last]
         if line.fixed and window.last == len(line.day) - 1 and window.deadline is not None:
             until = window.deadline
-            if all(leg.fixed for leg in legs):
-                until = max(until, *(leg.day[-1] for leg in legs)) if legs else until
         if not all(self.settler.reached(leg, until) for leg in legs):
             return Verdict("open", NO_LEG_PRICE)
         total = not by_price and all(one.total_known for one in (line, *legs))

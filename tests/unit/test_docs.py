@@ -158,7 +158,9 @@ def test_every_kind_of_instrument_is_described(kind):
     "words",
     [
         verdict.AHEAD,
+        verdict.AHEAD_ALONE,
         verdict.BEHIND,
+        verdict.BEHIND_ALONE,
         verdict.NO_DIFFERENT,
         verdict.TOO_FEW,
         verdict.NOT_ESTIMABLE,

@@ -100,6 +100,8 @@ class ChanceRules:
     walks: int
     walks_seed: int
     coin: float
+    shift_span: Literal["record", "history"]
+    shift_marks: Literal["ratio", "volatility"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -110,6 +112,8 @@ class VerdictRules:
     interval_level: float
     minimum_matured: int
     minimum_disjoint: int
+    edge: float
+    power: float
 
 
 @dataclass(frozen=True)
@@ -289,6 +293,8 @@ def _settlement(node: Node) -> SettlementRules:
 
 
 def _chance(node: Node) -> ChanceRules:
+    span = node.choice("shift_span", ("record", "history"))
+    marks = node.choice("shift_marks", ("ratio", "volatility"))
     return ChanceRules(
         enough_windows=node.integer("enough_windows", low=1, high=10_000),
         volatility_sessions=node.integer("volatility_sessions", low=5, high=10_000),
@@ -297,6 +303,8 @@ def _chance(node: Node) -> ChanceRules:
         walks=node.integer("walks", low=100, high=1_000_000),
         walks_seed=node.integer("walks_seed", low=0, high=2**63 - 1),
         coin=node.number("coin", low=0.0, high=1.0),
+        shift_span="record" if span == "record" else "history",
+        shift_marks="ratio" if marks == "ratio" else "volatility",
     )
 
 
@@ -306,4 +314,6 @@ def _verdict(node: Node) -> VerdictRules:
         interval_level=node.number("interval_level", low=0.5, high=0.9999),
         minimum_matured=node.integer("minimum_matured", low=1, high=1_000_000),
         minimum_disjoint=node.integer("minimum_disjoint", low=1, high=1_000_000),
+        edge=node.number("edge", low=0.001, high=0.5),
+        power=node.number("power", low=0.51, high=0.9999),
     )

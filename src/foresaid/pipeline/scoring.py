@@ -10,7 +10,14 @@ import pandas as pd
 
 from foresaid.claims.registry import NOT_A_CALL
 from foresaid.pipeline.groups import days, floats, grouped_calls, is_headline, is_scored
-from foresaid.score.scoreboard import GroupScore, Record, score_record
+from foresaid.pipeline.hurdles import BAND_COLUMNS, field_hurdles
+from foresaid.score.scoreboard import (
+    GroupScore,
+    Record,
+    is_long_enough,
+    is_one_sided,
+    score_record,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -18,6 +25,7 @@ if TYPE_CHECKING:
 
     from foresaid.ledger.store import Ledger
     from foresaid.model.codebook import Codebook
+    from foresaid.pipeline.hurdles import Hurdles
 
 
 @dataclass(frozen=True)
@@ -34,12 +42,15 @@ class Scores:
         The rules it was settled under.
     stale : tuple of str
         What the ledger has gained since.
+    hurdles : Hurdles
+        The calendar along which records were moved, and what it says of each.
     """
 
     rows: list[dict[str, Any]]
     as_of: date
     codebook: Codebook
     stale: tuple[str, ...]
+    hurdles: Hurdles
 
 
 def score_ledger(ledger: Ledger, by: Sequence[str], *, weighted: bool = False) -> Scores:
@@ -62,16 +73,24 @@ def score_ledger(ledger: Ledger, by: Sequence[str], *, weighted: bool = False) -
     found = grouped_calls(ledger, by)
     table, book = found.table, found.codebook
     table["weight"] = _weights(table, book) if weighted else 1.0
-    rows = []
-    for keys, numbers in found.groups:
-        group = table.iloc[numbers]
-        rows.append(keys | _counts(group) | _score(group, book))
-    return Scores(rows, found.settlement.as_of, book, found.stale)
+    parts = [table.iloc[rows] for _, rows in found.groups]
+    records = [_record(part[is_headline(part)]) for part in parts]
+    ranked = [is_long_enough(one, book) and not is_one_sided(one) for one in records]
+    leans = leans_against(table)
+    right = (table["result"] == "hit").to_numpy(dtype=bool) ^ leans
+    hurdles = field_hurdles(ledger, found, right, leans, ranked)
+    rows = [
+        keys | _counts(part) | asdict(score_record(record, book, shifted)) | band
+        for (keys, _), part, record, shifted, band in zip(
+            found.groups, parts, records, hurdles.shifted, hurdles.band, strict=True
+        )
+    ]
+    return Scores(rows, found.settlement.as_of, book, found.stale, hurdles)
 
 
 def score_columns_of(by: Sequence[str]) -> list[str]:
     """Return the columns of a score row, in order."""
-    return [*by, *_COUNTS, *(field.name for field in fields(GroupScore))]
+    return [*by, *_COUNTS, *(field.name for field in fields(GroupScore)), *BAND_COLUMNS]
 
 
 _COUNTS = (
@@ -116,8 +135,9 @@ def _beside(rows: pd.DataFrame, name: str) -> dict[str, Any]:
     }
 
 
-def _score(group: pd.DataFrame, book: Codebook) -> dict[str, Any]:
-    return asdict(score_record(_record(group[is_headline(group)]), book))
+def leans_against(table: pd.DataFrame) -> Any:  # noqa: ANN401 - a bool array
+    """Return which calls are right when their claim fails: stated as less than even."""
+    return np.nan_to_num(floats(table["probability_high"]), nan=1.0) < 0.5
 
 
 def _record(rows: pd.DataFrame) -> Record:
@@ -125,7 +145,7 @@ def _record(rows: pd.DataFrame) -> Record:
     sides = {"up": 1, "down": -1}
     return Record(
         came_true=(rows["result"] == "hit").to_numpy(dtype=bool),
-        leans_against=np.nan_to_num(high, nan=1.0) < 0.5,
+        leans_against=leans_against(rows),
         chance=floats(rows["chance"]),
         probability_low=low,
         probability_high=high,

@@ -56,10 +56,20 @@ class Settled:
     changes: list[dict[str, str]] = field(default_factory=list)
 
 
-def judge(
+@dataclass(frozen=True)
+class Again:
+    """Calls settled, with what carries them to other starts."""
+
+    world: World
+    calls: CodedCalls
+    outcomes: Outcomes
+    starts: Starts
+
+
+def settled(
     ledger: Ledger, frame: pd.DataFrame, codebook: Codebook, *, as_of: date, vintage: int
-) -> Judgement:
-    """Return the outcomes and chances of calls, without touching the ledger."""
+) -> Again:
+    """Return the outcomes of calls, without touching the ledger."""
     currencies = wanted_currencies(ledger, frame)
     world = load_world(ledger, codebook, as_of=as_of, vintage=vintage, currencies=currencies)
     calls = coded_calls(frame, world)
@@ -67,8 +77,16 @@ def judge(
     outcomes = settle_calls(
         calls.times, calls.claims, world.market, calls.inverse, codebook.settlement
     )
-    outcomes = with_other_horizons(outcomes, calls, world, codebook)
-    starts = starts_of(world, calls, outcomes)
+    return Again(world, calls, outcomes, starts_of(world, calls, outcomes))
+
+
+def judge(
+    ledger: Ledger, frame: pd.DataFrame, codebook: Codebook, *, as_of: date, vintage: int
+) -> Judgement:
+    """Return the outcomes, chances and losses of calls, without touching the ledger."""
+    found = settled(ledger, frame, codebook, as_of=as_of, vintage=vintage)
+    world, calls, starts = found.world, found.calls, found.starts
+    outcomes = with_other_horizons(found.outcomes, calls, world, codebook)
     return Judgement(
         world,
         calls,
@@ -192,7 +210,8 @@ def _summary(table: pd.DataFrame, as_of: date, *, is_new: bool) -> Settled:
     return Settled(as_of, dict(counts), dict(reasons.most_common()), is_new)
 
 
-def _groups(calls: CodedCalls, rows: BoolArray) -> list[tuple[Kind, IntArray]]:
+def groups_of(calls: CodedCalls, rows: BoolArray) -> list[tuple[Kind, IntArray]]:
+    """Return the kinds among some calls, each with its rows."""
     order = np.flatnonzero(rows)
     found = group_calls(calls.claims.kind, calls.inverse, order)
     return [(group.kind, group.rows) for group in found]
@@ -224,7 +243,7 @@ def _chances(
     fit = (resolved.matured | resolved.running) & (outcomes.result != "void")
     fit &= np.isfinite(outcomes.marks[:, 0])
     return chances(
-        _groups(calls, fit),
+        groups_of(calls, fit),
         world.market.bars,
         starts,
         codebook.chance,

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 CAUTIONS = (
     "A score is evidence about a record, not about a person, and no investment advice.",
-    "Small records cannot tell skill from luck. The base rate alone gives false alarms where "
-    "calls overlap.",
+    "Small records cannot tell skill from luck, and the best of many looks good by luck alone.",
     "Before naming people: editorial and legal review under local law, and an offer to reply.",
 )

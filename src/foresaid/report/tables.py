@@ -122,8 +122,10 @@ def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
         Column("right", lambda row: f"{row['hits']} of {row['n']}"),
         Column("in % (interval)", _interval),
         Column("chance", _by_chance),
-        Column("p coin", lambda row: p_value(row["p_coin"])),
-        Column("p base", lambda row: p_value(row["p_base"])),
+        Column("coin", lambda row: p_value(row["p_coin"])),
+        Column("base", lambda row: p_value(row["p_base"])),
+        Column("timing", lambda row: p_value(row["p_timing"])),
+        Column("field", lambda row: p_value(row["p_field"])),
         Column("apart", lambda row: str(row["n_effective"])),
     ]
     if has_weights:
@@ -164,8 +166,10 @@ def has_something_beside(row: dict[str, Any]) -> bool:
 
 SCORE_GUIDE = (
     "right: calls that came right, of all that matured with a stated date. chance: how many "
-    "would have with no skill, from each market's own past. p: how often luck alone does as "
-    "well or better, against a coin and against that past. apart: windows without overlap."
+    "would have with no skill, from each market's own past. Then four hurdles, each the share "
+    "of cases in which luck alone does as well or better: against a coin; against that past "
+    "(base); with the same calls made at other times (timing); and as the best of all records "
+    "in the table that are long enough (field). apart: windows without overlap."
 )
 BESIDE_GUIDE = (
     "Outside the rates: open and void calls, calls settled early whose date has not come, and "

@@ -9,9 +9,10 @@ import numpy as np
 
 from foresaid.score.overlap import disjoint_windows
 from foresaid.score.poisson_binomial import poisson_binomial_tails
+from foresaid.score.power import best_possible_p, calls_needed
 from foresaid.score.probability import brier_score_band, brier_skill
 from foresaid.score.proportions import binomial_tails, wilson_interval
-from foresaid.score.verdict import Evidence, Verdict, verdict
+from foresaid.score.verdict import Evidence, Shifted, Verdict, verdict
 
 if TYPE_CHECKING:
     from foresaid.model.bars import BoolArray, FloatArray, IntArray
@@ -69,7 +70,8 @@ class GroupScore:
 
     ``excess`` is in hits, rates and bounds are fractions. P-values are one-sided: ``p_coin``
     and ``p_base`` in the direction of skill, the ``_low`` ones against it; both tails include
-    the observed count.
+    the observed count. The ``timing`` numbers rest on the calls that can be moved along the
+    field's calendar, the ``field`` ones on all records that were looked at together.
     """
 
     n: int
@@ -85,6 +87,16 @@ class GroupScore:
     p_coin_low: float | None
     p_base: float | None
     p_base_low: float | None
+    n_timing: int
+    timing_hits: int
+    timing_expected: float | None
+    p_timing: float | None
+    p_timing_low: float | None
+    p_field: float | None
+    p_field_low: float | None
+    field_size: int
+    shifts: int
+    windows_disjoint: int
     n_probability: int
     brier: float | None
     brier_chance: float | None
@@ -95,7 +107,9 @@ class GroupScore:
     verdict_reason: str
 
 
-def score_record(record: Record, codebook: Codebook) -> GroupScore:
+def score_record(
+    record: Record, codebook: Codebook, shifted: Shifted | None = None
+) -> GroupScore:
     """Return the scores of one group of matured calls.
 
     Parameters
@@ -104,6 +118,8 @@ def score_record(record: Record, codebook: Codebook) -> GroupScore:
         The n calls, n may be 0.
     codebook : Codebook
         The coin, the coverage of intervals, the level and the minimum record.
+    shifted : Shifted, optional
+        Where the record stands among its own shifts and in the field.
 
     Returns
     -------
@@ -132,10 +148,10 @@ def score_record(record: Record, codebook: Codebook) -> GroupScore:
     hits = int(record.right.sum())
     interval = wilson_interval(hits, n, level=codebook.verdict.interval_level) if n else None
     coin = binomial_tails(hits, n, chance=codebook.chance.coin) if n else None
-    effective = _effective(record)
+    effective = effective_n(record)
     base = _base(record)
     brier = _brier(record)
-    said = _verdict(record, base, effective, codebook)
+    said = _verdict(record, base, shifted, codebook)
     return GroupScore(
         n=n,
         n_effective=effective,
@@ -150,6 +166,16 @@ def score_record(record: Record, codebook: Codebook) -> GroupScore:
         p_coin_low=coin.lower if coin else None,
         p_base=base.upper,
         p_base_low=base.lower,
+        n_timing=shifted.n if shifted else 0,
+        timing_hits=shifted.hits if shifted else 0,
+        timing_expected=shifted.mean if shifted else None,
+        p_timing=shifted.p_upper if shifted else None,
+        p_timing_low=shifted.p_lower if shifted else None,
+        p_field=shifted.p_field if shifted else None,
+        p_field_low=shifted.p_field_low if shifted else None,
+        field_size=shifted.field_size if shifted else 0,
+        shifts=shifted.shifts if shifted else 0,
+        windows_disjoint=disjoint_windows(record.start, record.end),
         n_probability=brier.n,
         brier=brier.score,
         brier_chance=brier.chance,
@@ -185,7 +211,7 @@ def _base(record: Record) -> _Base:
     if not n:
         return _Base(0, 0, 0.0, None, None, None, None)
     tails = poisson_binomial_tails(hits, chance)
-    best, worst = float(np.prod(chance)), float(np.prod(1.0 - chance))
+    best, worst = best_possible_p(chance), best_possible_p(1.0 - chance)
     return _Base(n, hits, float(chance.sum()), tails.upper, tails.lower, best, worst)
 
 
@@ -216,8 +242,32 @@ def _brier_of(record: Record, rows: BoolArray) -> float:
     return brier_score_band(low, high, record.came_true[rows])
 
 
-def _effective(record: Record) -> int:
-    """Return how many windows do not overlap, counted for each instrument apart."""
+def effective_n(record: Record) -> int:
+    """Return how many windows do not overlap, counted for each instrument apart.
+
+    Parameters
+    ----------
+    record : Record
+        The n calls, n may be 0.
+
+    Returns
+    -------
+    int
+
+    Raises
+    ------
+    ValueError
+        If a window ends before it starts.
+
+    References
+    ----------
+    See ``disjoint_windows``.
+
+    Examples
+    --------
+    >>> effective_n(empty_record())
+    0
+    """
     total = 0
     for number in np.unique(record.instrument):
         own = record.instrument == number
@@ -231,9 +281,77 @@ def _weighted(values: FloatArray, weight: FloatArray) -> float | None:
     return float((values[known] * weight[known]).sum() / total) if total > 0 else None
 
 
-def _verdict(record: Record, base: _Base, effective: int, codebook: Codebook) -> Verdict:
+def is_one_sided(record: Record) -> bool:
+    """Return whether every call points the same way.
+
+    Parameters
+    ----------
+    record : Record
+        The n calls; False for none.
+
+    Returns
+    -------
+    bool
+        A call that leans against its claim points the other way; one without direction
+        keeps a record from being one-sided.
+
+    Raises
+    ------
+    ValueError
+        Never; the columns are those of a record.
+
+    References
+    ----------
+    Common practice, no source.
+
+    Examples
+    --------
+    >>> is_one_sided(empty_record())
+    False
+    """
     pointing = np.where(record.leans_against, -record.direction, record.direction)
-    one_sided = len(pointing) > 0 and (bool((pointing > 0).all()) or bool((pointing < 0).all()))
+    return len(pointing) > 0 and (bool((pointing > 0).all()) or bool((pointing < 0).all()))
+
+
+def is_long_enough(record: Record, codebook: Codebook) -> bool:
+    """Return whether a record may be judged and ranked at all.
+
+    Parameters
+    ----------
+    record : Record
+        The n calls.
+    codebook : Codebook
+        The minimum record.
+
+    Returns
+    -------
+    bool
+        It depends on which calls were made, never on how they came out.
+
+    Raises
+    ------
+    ValueError
+        If a window ends before it starts.
+
+    References
+    ----------
+    The minimum record is common practice, no source.
+
+    Examples
+    --------
+    >>> from foresaid.model.codebook import default_codebook
+    >>> is_long_enough(empty_record(), default_codebook())
+    False
+    """
+    rules = codebook.verdict
+    enough = min(len(record.came_true), int(np.isfinite(record.chance).sum()))
+    return enough >= rules.minimum_matured and effective_n(record) >= rules.minimum_disjoint
+
+
+def _verdict(
+    record: Record, base: _Base, shifted: Shifted | None, codebook: Codebook
+) -> Verdict:
+    effective = effective_n(record)
     evidence = Evidence(
         n=len(record.came_true),
         n_base=base.n,
@@ -244,6 +362,20 @@ def _verdict(record: Record, base: _Base, effective: int, codebook: Codebook) ->
         p_lower=base.lower,
         p_best=base.best,
         p_worst=base.worst,
-        is_one_sided=one_sided,
+        is_one_sided=is_one_sided(record),
+        shifted=shifted,
+        n_needed=_needed(base, len(record.came_true) / max(effective, 1), codebook),
     )
     return verdict(evidence, codebook.verdict)
+
+
+def _needed(base: _Base, overlap: float, codebook: Codebook) -> int | None:
+    """Return how many calls like these would show the codebook's edge, None where none do."""
+    rules = codebook.verdict
+    chance = base.expected / base.n if base.n else codebook.chance.coin
+    skill = chance + rules.edge
+    if skill > 1.0:
+        return None
+    return calls_needed(
+        chance, skill, level=rules.level, power=rules.power, overlap=max(overlap, 1.0)
+    )

@@ -5,7 +5,15 @@ import pytest
 from scipy import stats
 
 from foresaid.model.codebook import default_codebook
-from foresaid.score.scoreboard import GroupScore, Record, empty_record, score_record
+from foresaid.score.scoreboard import (
+    GroupScore,
+    Record,
+    empty_record,
+    is_long_enough,
+    is_one_sided,
+    score_record,
+)
+from foresaid.score.verdict import Shifted
 
 BOOK = default_codebook()
 
@@ -36,7 +44,8 @@ def scored(*args, **columns):
 def test_an_empty_record_has_counts_and_no_numbers():
     score = score_record(empty_record(), BOOK)
     assert score.verdict == "too few to tell"
-    counts = {"n", "n_effective", "hits", "n_base", "n_probability"}
+    counts = {"n", "n_effective", "hits", "n_base", "n_probability", "n_timing"}
+    counts |= {"timing_hits", "field_size", "shifts", "windows_disjoint"}
     for field in fields(GroupScore):
         value = getattr(score, field.name)
         if field.name in counts:
@@ -132,21 +141,64 @@ def test_weights_count_in_the_weighted_rates_alone():
     assert (none.weighted_hit_rate, none.weighted_expected_rate) == (None, None)
 
 
+def moved(hits, *, n=40, p_upper=0.5, p_lower=0.5):
+    """Return where a record stands among a thousand shifts, and alone in its field."""
+    return Shifted(n, hits, 20.0, p_upper, p_lower, 0.001, 0.001, 1000, p_upper, p_lower, 1)
+
+
 def test_verdicts_of_long_records():
-    chance, n = 0.5, 40
-    assert scored([1] * 36 + [0] * 4).verdict == "ahead of the base rate"
-    assert scored([0] * 36 + [1] * 4).verdict == "behind the base rate"
-    assert scored([1, 0] * 20).verdict == "no different from chance"
+    n = 40
+    good, poor = [1] * 36 + [0] * 4, [0] * 36 + [1] * 4
+    first = moved(36, p_upper=0.002)
+    assert score_record(record(good), BOOK, first).verdict == "ahead of chance"
+    assert score_record(record(good), BOOK, moved(36)).verdict == "no different from chance"
+    last = moved(4, p_lower=0.002)
+    assert score_record(record(poor), BOOK, last).verdict == "behind chance"
+    assert score_record(record([1, 0] * 20), BOOK, first).verdict == "no different from chance"
+    assert score_record(record(good), BOOK).verdict == "not estimable"
     up = np.ones(n, dtype=np.int64)
-    assert scored([1] * 36 + [0] * 4, direction=up).verdict == "not estimable"
+    assert score_record(record(good, direction=up), BOOK, first).verdict == "not estimable"
     # betting against a rise points down
     half = np.arange(n) % 2 == 0
-    mixed = scored(
-        np.where(half, 0, 1), leans_against=half, direction=up, chance=np.full(n, chance)
-    )
-    assert mixed.verdict == "ahead of the base rate"
-    sure = scored([1] * n, chance=np.full(n, 0.999))
-    assert sure.verdict == "no different from chance"
+    mixed = record(np.where(half, 0, 1), leans_against=half, direction=up)
+    assert score_record(mixed, BOOK, first).verdict == "ahead of chance"
+    sure = record([1] * n, chance=np.full(n, 0.999))
+    assert score_record(sure, BOOK, first).verdict == "no different from chance"
+
+
+def test_the_numbers_of_the_shifts_are_passed_on():
+    score = score_record(record([1, 0] * 20), BOOK, moved(20, n=38, p_upper=0.6, p_lower=0.45))
+    assert (score.n_timing, score.timing_hits, score.timing_expected) == (38, 20, 20.0)
+    assert (score.p_timing, score.p_timing_low) == (0.6, 0.45)
+    assert (score.p_field, score.p_field_low, score.field_size) == (0.6, 0.45, 1)
+    assert score.shifts == 1000
+
+
+def test_windows_of_several_instruments_overlap_in_time():
+    twice = {"start": [0, 0, 10, 10], "end": [10, 10, 20, 20], "instrument": [0, 1, 0, 1]}
+    score = scored([1, 1, 1, 1], **twice)
+    assert (score.n_effective, score.windows_disjoint) == (4, 2)
+
+
+def test_which_records_may_be_ranked():
+    long_one = record([1, 0] * 20)
+    assert is_long_enough(long_one, BOOK)
+    assert not is_long_enough(record([1, 0] * 9), BOOK)
+    assert not is_long_enough(replace(long_one, chance=np.full(40, np.nan)), BOOK)
+    crowded = replace(long_one, start=np.zeros(40, np.int64), end=np.full(40, 9))
+    assert not is_long_enough(crowded, BOOK)
+    assert not is_one_sided(long_one)
+    assert is_one_sided(replace(long_one, direction=-np.ones(40, dtype=np.int64)))
+    aimless = np.where(np.arange(40) == 3, 0, 1)
+    assert not is_one_sided(replace(long_one, direction=aimless))
+
+
+def test_calls_needed_are_named_where_a_record_is_short():
+    reason = scored([1, 0, 1], chance=[0.5, 0.5, 0.5]).verdict_reason
+    # 0.5 against 0.6, one-sided at 0.05: the power of 0.8 is kept from 169 on
+    assert "takes about 169" in reason
+    assert stats.binom.sf(stats.binom.isf(0.05, 168, 0.5), 168, 0.6) < 0.8
+    assert stats.binom.sf(stats.binom.isf(0.05, 169, 0.5), 169, 0.6) >= 0.8
 
 
 def test_columns_of_different_length_are_a_bug():
