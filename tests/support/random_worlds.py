@@ -17,7 +17,6 @@ from zoneinfo import ZoneInfo
 import numpy as np
 from hypothesis import strategies as st
 
-from foresaid.ledger import writes
 from foresaid.ledger.store import Ledger
 from foresaid.model.codebook import parse_codebook
 from foresaid.pipeline.batches import ImportRequest
@@ -761,5 +760,3 @@ def described(one, off):
     lines.append("slow settler, product: " + json.dumps(off, indent=1))
     return "\n".join(lines)
 
-
-__all__ = ["Bench", "Drawn", "Seeded", "described", "differences", "reduced", "world", "writes"]

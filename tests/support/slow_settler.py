@@ -160,6 +160,7 @@ class Line:
     ended: int | None = None  # day from which terms stand in for prices
     fixed: bool = False  # the terms are an amount for good
     queried: bool = False
+    swapped: dict[int, float] = field(default_factory=dict)  # closes in query, a part of theirs
 
 
 @dataclass
@@ -507,19 +508,20 @@ class SlowSettler:
     def kept_rows(self, line: Line, end: Deed | None) -> list[Row]:
         """Return the rows that are sessions; note the stale ones."""
         kept: list[Row] = []
-        traded = False
+        traded, before = False, None
         for row in line.thing.rows:
             if row.day > self.world.as_of or (end is not None and row.day >= end.day):
                 break
+            repeats = before is not None and row.close == before.close
+            flat = row.high in (None, row.close) and row.low in (None, row.close)
+            stale = row.volume == 0 and traded and repeats and flat
+            traded, before = traded or bool(row.volume), row
             if any(begin <= row.day < until for begin, until in line.halts):
                 continue
-            flat = row.high in (None, row.close) and row.low in (None, row.close)
-            if row.volume == 0 and traded and kept and row.close == kept[-1].close and flat:
+            if stale:
                 line.stale.add(row.day)
-                continue
-            if row.volume:
-                traded = True
-            kept.append(row)
+            else:
+                kept.append(row)
         return kept
 
     def check_prices(self, line: Line, *, clean: bool) -> None:
@@ -548,6 +550,7 @@ class SlowSettler:
             line.high[i], line.low[i] = high, low
             if bad_close:
                 line.close[i] = before
+                line.swapped[i] = before / close if close else 1.0
 
     def reinvest(self, line: Line, rows: list[Row]) -> None:
         """Set the total return of an instrument, where it is known."""
@@ -556,7 +559,8 @@ class SlowSettler:
         if line.thing.series == "total-return":
             line.total, line.total_known = list(line.close), True
         elif rows and all(row.total is not None for row in rows):
-            line.total, line.total_known = [row.total for row in rows], True
+            line.total_known = True
+            line.total = [row.total * line.swapped.get(i, 1.0) for i, row in enumerate(rows)]
         else:
             line.total_known = bool(dividends)
             shares, waiting = 1.0, list(dividends)
@@ -779,9 +783,12 @@ class SlowSettler:
             return NO_LEVELS
         if any(self.things[symbol].kind == "yield" for symbol in claim.others):
             return NO_RETURN
-        end = self.ending(thing.symbol)
-        if claim.others and "session" in horizon and end and end.kind != "merger":
-            return UNCOUNTABLE if end.day < said.day else ""
+        _, sessions = deadline_of(horizon, said.day)
+        line = self.line(thing.symbol, "", clean=False)
+        if claim.others and sessions and line.fixed:
+            reference = self.window(line, said, None, sessions).reference
+            if reference is None or reference + sessions > len(line.day) - 1:
+                return UNCOUNTABLE
         return ""
 
     def started(self, call: Said, said: Moment) -> Moment | Answer:
@@ -795,10 +802,8 @@ class SlowSettler:
             return read_moment(at, zone) if met else Answer("void", NOT_MET)
         symbol, _, claim = what.partition(" ")
         at = call.at
-        if said.instant is not None:
-            at = said.instant.isoformat()
-            if not self.things[symbol].zone:
-                at = call.at if "+" in call.at[10:] or "-" in call.at[10:] else at
+        if len(at) == 16:  # a bare time is one of the call's own venue
+            at = datetime.fromisoformat(at).replace(tzinfo=ZoneInfo(zone)).isoformat()
         found = self.settle(Said("", at, symbol, claim, by))
         if found.result == "open":
             return Answer("open", UNDECIDED)
@@ -924,8 +929,7 @@ class Job:
         if not line.fixed or window.last not in (None, len(line.day) - 1):
             return
         if window.deadline is None:
-            left = len(line.day) - 1 - (window.reference or 0)
-            if window.reference is None or self.sessions > left:
+            if window.reference is None or window.reference + self.sessions >= len(line.day):
                 window.result, window.reason = "void", UNCOUNTABLE
             return
         every = all(leg.fixed for leg in legs)
@@ -1170,13 +1174,13 @@ class Job:
         return Verdict("hit", "", window.last, close, self.measure(close, level))
 
     def volatility(self, line: Line, window: Window, reference: int) -> Verdict:
+        closes = line.close[reference : window.end + 1]
+        if window.last is not None and len(closes) < 3:
+            return Verdict("void", TOO_FEW)
+        if any(close <= 0 for close in closes):  # no later session can mend that
+            return Verdict("void", NO_LOGARITHM)
         if window.last is None:
             return Verdict("open")
-        closes = line.close[reference : window.last + 1]
-        if len(closes) < 3:
-            return Verdict("void", TOO_FEW)
-        if any(close <= 0 for close in closes):
-            return Verdict("void", NO_LOGARITHM)
         moves = [math.log(closes[i]) - math.log(closes[i - 1]) for i in range(1, len(closes))]
         found = statistics.stdev(moves) * math.sqrt(252)
         mark = self.claim.numbers[0][0] / 100

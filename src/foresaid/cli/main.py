@@ -11,7 +11,12 @@ import typer
 from typer.core import TyperGroup
 
 from foresaid import __version__
-from foresaid.cli import ledger_commands, person_commands, score_commands
+from foresaid.cli import (
+    ledger_commands,
+    person_commands,
+    planning_commands,
+    score_commands,
+)
 from foresaid.cli.console import say, show_issues
 from foresaid.model.errors import ForesaidError
 
@@ -78,6 +83,7 @@ def _root(
 ledger_commands.add_to(app)
 person_commands.add_to(app)
 score_commands.add_to(app)
+planning_commands.add_to(app)
 
 
 def main() -> None:

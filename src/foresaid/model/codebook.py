@@ -11,7 +11,7 @@ import tomllib
 from dataclasses import asdict, dataclass, field
 from functools import cache, cached_property
 from importlib import resources
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 from foresaid.model.checks import Node
 from foresaid.model.errors import InputRejected
@@ -152,11 +152,30 @@ class Codebook:
         return hashlib.sha256(self.canonical.encode()).hexdigest()
 
 
+# what version 2 added; a codebook of version 1 takes these as shipped
+_LATER = {
+    "settlement": (
+        "query_moves",
+        "query_sessions",
+        "query_minimum",
+        "query_part",
+        "query_points",
+        "query_part_short",
+        "query_points_short",
+    ),
+    "chance": ("shift_span", "shift_marks"),
+    "verdict": ("edge", "power"),
+}
+
+
 @cache
 def default_codebook() -> Codebook:
     """Return the codebook shipped with the package."""
-    text = resources.files("foresaid.model").joinpath("codebook.toml").read_text("utf-8")
-    return parse_codebook(text, file="codebook.toml")
+    return parse_codebook(_shipped(), file="codebook.toml")
+
+
+def _shipped() -> str:
+    return resources.files("foresaid.model").joinpath("codebook.toml").read_text("utf-8")
 
 
 def load_codebook(path: Path | None) -> Codebook:
@@ -192,7 +211,7 @@ def parse_codebook(text: str, *, file: str) -> Codebook:
         raw = tomllib.loads(text)
     except tomllib.TOMLDecodeError as fault:
         raise InputRejected(f"The codebook {file} is not valid TOML: {fault}") from fault
-    root = Node(raw, file=file)
+    root = Node(_with_later_rules(raw), file=file)
     book = _read(root, text)
     root.finish()
     if root.issues:
@@ -200,8 +219,21 @@ def parse_codebook(text: str, *, file: str) -> Codebook:
     return book
 
 
+def _with_later_rules(raw: dict[str, Any]) -> dict[str, Any]:
+    """Return a codebook of the first version with the rules that came later, as shipped."""
+    if raw.get("version") != 1:
+        return raw
+    shipped = tomllib.loads(_shipped())
+    added = {
+        table: {key: shipped[table][key] for key in keys} | raw[table]
+        for table, keys in _LATER.items()
+        if isinstance(raw.get(table), dict)
+    }
+    return raw | added
+
+
 def _read(root: Node, source: str) -> Codebook:
-    root.choice("version", (1,))
+    root.choice("version", (1, 2))
     classes = root.table("horizon_classes")
     likelihood = root.table("likelihood")
     scales = {key: _scale(node) for key, node in likelihood.tables("scales")}

@@ -125,6 +125,7 @@ def grouped_calls(ledger: Ledger, by: Sequence[str]) -> Grouped:
     desks = {handle: one.desk for handle, (_, one) in queries.forecasters(ledger).items()}
     table["desk"] = [desks[handle] for handle in table["forecaster"]]
     table["year"] = [text[:4] for text in table["said_at"]]
+    table["weight"] = 1.0
     return Grouped(table, _groups(table, by), settlement, book, stale_parts(ledger, settlement))
 
 

@@ -72,9 +72,10 @@ def score_ledger(ledger: Ledger, by: Sequence[str], *, weighted: bool = False) -
     """
     found = grouped_calls(ledger, by)
     table, book = found.table, found.codebook
-    table["weight"] = _weights(table, book) if weighted else 1.0
+    if weighted:
+        table["weight"] = _weights(table, book)
     parts = [table.iloc[rows] for _, rows in found.groups]
-    records = [_record(part[is_headline(part)]) for part in parts]
+    records = [record_of(part[is_headline(part)]) for part in parts]
     ranked = [is_long_enough(one, book) and not is_one_sided(one) for one in records]
     leans = leans_against(table)
     right = (table["result"] == "hit").to_numpy(dtype=bool) ^ leans
@@ -94,7 +95,7 @@ def score_columns_of(by: Sequence[str]) -> list[str]:
 
 
 _COUNTS = (
-    "screened", "not_a_call", "open", "void", "early", "imputed_n", "imputed_hits",
+    "screened", "not_a_call", "open", "void", "views", "early", "imputed_n", "imputed_hits",
     "imputed_expected_hits", "withdrawn_n", "withdrawn_hits", "withdrawn_expected_hits",
 )  # fmt: skip
 
@@ -117,15 +118,28 @@ def _counts(group: pd.DataFrame) -> dict[str, Any]:
         "not_a_call": int((result == NOT_A_CALL).sum()),
         "open": int((result == "open").sum()),
         "void": int((result == "void").sum()),
+        "views": _views(group[is_headline(group)]),
         "early": int((result.isin(["hit", "miss"]) & ~scored).sum()),
         **_beside(group[imputed], "imputed"),
         **_beside(group[withdrawn], "withdrawn"),
     }
 
 
+def _views(rows: pd.DataFrame) -> int:
+    """Return how many views the calls state: one with all its revisions counts once."""
+    before = {ref: old for ref, old in zip(rows["ref"], rows["revises"], strict=True) if old}
+    firsts = set()
+    for ref in rows["ref"]:
+        first = ref
+        while first in before:  # a revision names an earlier statement, so this ends
+            first = before[first]
+        firsts.add(first)
+    return len(firsts)
+
+
 def _beside(rows: pd.DataFrame, name: str) -> dict[str, Any]:
     """Return how many calls of a part of the group came right, and how many by chance."""
-    part = _record(rows)
+    part = record_of(rows)
     known = np.isfinite(part.chance)
     expected = float(part.chance_right[known].sum()) if known.any() else None
     return {
@@ -140,7 +154,8 @@ def leans_against(table: pd.DataFrame) -> Any:  # noqa: ANN401 - a bool array
     return np.nan_to_num(floats(table["probability_high"]), nan=1.0) < 0.5
 
 
-def _record(rows: pd.DataFrame) -> Record:
+def record_of(rows: pd.DataFrame) -> Record:
+    """Return calls as the arrays that scores are worked out from."""
     low, high = floats(rows["probability_low"]), floats(rows["probability_high"])
     sides = {"up": 1, "down": -1}
     return Record(

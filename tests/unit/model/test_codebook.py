@@ -117,8 +117,8 @@ def test_layout_and_comments_leave_the_digest(text):
 
 
 WRONG = [
-    ("version = 1", "version = 2", "version", "2", "1"),
-    ("version = 1", "version = true", "version", "True", "1"),
+    ("version = 2", "version = 3", "version", "3", "1 or 2"),
+    ("version = 2", "version = true", "version", "True", "1 or 2"),
     ('name = "foresaid default"', 'name = ""', "name", "", "a text that is not empty"),
     ('name = "foresaid default"', "name = 7", "name", "7", "a text that is not empty"),
     (
@@ -329,7 +329,7 @@ def test_an_unknown_key_is_refused_with_those_that_are_known():
     ("old", "key"),
     [
         ("coin = 0.5 ", "chance.coin"),
-        ("version = 1", "version"),
+        ("version = 2", "version"),
         ('day_only = "before-close"', "settlement.day_only"),
         ('undated = "undated"', "horizon_classes.undated"),
         ('default = "icd-203"', "likelihood.default"),
@@ -420,3 +420,23 @@ def test_a_file_that_cannot_be_read(tmp_path):
     path.write_bytes(b'name = "\xe9"')
     with pytest.raises(InputRejected, match="cannot be read"):
         load_codebook(path)
+
+
+def test_a_codebook_of_the_first_version_takes_later_rules_as_shipped():
+    book = default_codebook()
+    lines = [
+        line
+        for line in book.source.replace("version = 2", "version = 1").splitlines()
+        if not line.startswith(("query_", "shift_", "edge =", "power ="))
+    ]
+    old = "\n".join(lines)
+    read = parse_codebook(old, file="old.toml")
+    assert read == book
+    assert read.digest == book.digest
+    own = old.replace("[verdict]", "[verdict]\nedge = 0.2")
+    assert parse_codebook(own, file="old.toml").verdict.edge == 0.2
+    with pytest.raises(InputRejected) as caught:
+        parse_codebook(old.replace("version = 1", "version = 2"), file="new.toml")
+    assert len(caught.value.issues) == 11
+    with pytest.raises(InputRejected, match="refused"):
+        parse_codebook("version = 1\nverdict = 3\n", file="old.toml")
