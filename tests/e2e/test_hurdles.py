@@ -133,3 +133,31 @@ def test_nothing_to_move(tmp_path):
     assert (row["n_timing"], row["shifts"], row["p_timing"]) == (0, 0, None)
     assert row["verdict"] == "too few to tell"
     assert "too few to tell" in invoke("score", "--ledger", desk.ledger).stdout
+
+
+def test_the_ranking_keeps_short_records_apart(desk):
+    text = desk.run("score", "--field").stdout
+    ranking, apart = text.split("Not ranked")
+    assert "anna" in ranking
+    assert "bert" in ranking
+    assert "carl" not in ranking
+    assert "carl" in apart
+    assert "too few to tell" in apart
+    assert "not about a person" in apart
+    empty = desk.run("score", "--field", "--by", "year").stdout
+    assert "2019" in empty
+
+
+def test_a_call_and_its_revisions_are_one_view(tmp_path):
+    desk = Desk(tmp_path).stock()
+    header = "ref,forecaster,said_at,instrument,claim,horizon,revises"
+    desk.calls(
+        ("C1", "t.mavren", "2025-03-03", "ORVA", "ends higher", "2025-03-10", ""),
+        ("C2", "t.mavren", "2025-03-04", "ORVA", "ends lower", "2025-03-11", "C1"),
+        ("C3", "t.mavren", "2025-03-05", "ORVA", "ends lower", "2025-03-12", "C2"),
+        ("C4", "t.mavren", "2025-03-06", "ORVA", "ends lower", "2025-03-13", ""),
+        header=header,
+    )
+    desk.settle()
+    (row,) = desk.scores()
+    assert (row["n"], row["views"]) == (4, 2)

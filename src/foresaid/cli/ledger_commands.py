@@ -221,7 +221,7 @@ def demo(
         if format_ is Format.table:
             _show_settled(done, format_)
             write("")
-        show_scores(path, ["forecaster"], format_, weighted=False)
+        show_scores(path, ["forecaster"], format_)
     if ledger is None:
         say("To keep the ledger and look around: foresaid demo --ledger demo.foresaid")
     else:

@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
 from foresaid.cli.console import Format, console, counted, give_out, say, write
 from foresaid.cli.options import LedgerPath, OutputFormat
+
+if TYPE_CHECKING:
+    from rich.console import Console
 
 GroupKeys = Annotated[
     str,
@@ -88,18 +91,24 @@ def score(
     weighted: Annotated[
         bool, typer.Option("--weighted", help="Count the codebook's class weights, too.")
     ] = False,
+    field: Annotated[
+        bool, typer.Option("--field", help="Rank the field beside the band of luck.")
+    ] = False,
     format_: OutputFormat = Format.table,
 ) -> None:
-    """Score the settled calls against a coin and the base rate.
+    """Score the settled calls against four kinds of chance.
 
-    The base rate is how often the same words came true in the market's own past.
+    A coin; the market's own past; the same calls at other times; and the best of the field
+    under those.
 
     Example: foresaid score --ledger desk.foresaid --by forecaster,horizon
     """
-    show_scores(ledger, _keys(by), format_, weighted=weighted)
+    show_scores(ledger, _keys(by), format_, weighted=weighted, field=field)
 
 
-def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) -> None:
+def show_scores(
+    ledger: Path, keys: list[str], form: Format, *, weighted: bool = False, field: bool = False
+) -> None:
     """Give out the scores of one ledger, with the cautions beside the table."""
     from foresaid.ledger.store import Ledger
     from foresaid.pipeline.scoring import score_columns_of, score_ledger
@@ -116,16 +125,35 @@ def show_scores(ledger: Path, keys: list[str], form: Format, *, weighted: bool) 
         say("There is no call to score yet.")
         return
     screen = console()
-    shown = tables.score_columns(keys, has_weights=weighted)
-    screen.print(tables.make_table(shown, scores.rows, width=screen.width))
-    screen.print(f"\n{tables.SCORE_GUIDE}\n")
-    beside = [row for row in scores.rows if tables.has_something_beside(row)]
-    if beside:
-        columns = tables.beside_columns(keys)
-        screen.print(tables.make_table(columns, beside, width=screen.width))
-        screen.print(f"\n{tables.BESIDE_GUIDE}\n")
+    if field:
+        _show_field(screen, keys, scores.rows)
+    else:
+        shown = tables.score_columns(keys, has_weights=weighted)
+        screen.print(tables.make_table(shown, scores.rows, width=screen.width))
+        screen.print(f"\n{tables.SCORE_GUIDE}\n")
+        beside = [row for row in scores.rows if tables.has_something_beside(row)]
+        if beside:
+            columns = tables.beside_columns(keys)
+            screen.print(tables.make_table(columns, beside, width=screen.width))
+            screen.print(f"\n{tables.BESIDE_GUIDE}\n")
     for text in CAUTIONS:
         screen.print(text)
+
+
+def _show_field(screen: Console, keys: list[str], rows: list[dict[str, Any]]) -> None:
+    from foresaid.report import field
+    from foresaid.report.tables import make_table
+
+    members = field.ranked(rows)
+    if members:
+        shown = field.field_columns(keys)
+        screen.print(make_table(shown, members, width=screen.width))
+        screen.print(f"\n{field.FIELD_GUIDE}\n")
+    apart = [row for row in rows if not field.in_field(row)]
+    if apart:
+        screen.print(field.APART_GUIDE)
+        screen.print(make_table(field.apart_columns(keys), apart, width=screen.width))
+        screen.print("")
 
 
 def errors(

@@ -147,6 +147,7 @@ def _shifted(
                 n=n,
                 hits=int(timing.hits[group]),
                 mean=float(timing.mean[group]),
+                deviation=float(timing.deviation[group]),
                 p_upper=float(timing.p_upper[group]),
                 p_lower=float(timing.p_lower[group]),
                 best_upper=float(timing.best_upper[group]),

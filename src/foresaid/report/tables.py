@@ -111,14 +111,15 @@ def _text(name: str) -> Callable[[dict[str, Any]], str]:
     return lambda row: str(row[name] or "–")
 
 
-def _keys(keys: Sequence[str]) -> list[Column]:
+def key_columns(keys: Sequence[str]) -> list[Column]:
+    """Return the columns that name a group."""
     return [Column(key, _text(key), "left") for key in keys]
 
 
 def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
     """Return the columns of the score table for groups by ``keys``."""
     columns = [
-        *_keys(keys),
+        *key_columns(keys),
         Column("right", lambda row: f"{row['hits']} of {row['n']}"),
         Column("in % (interval)", _interval),
         Column("chance", _by_chance),
@@ -137,7 +138,7 @@ def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
 def beside_columns(keys: Sequence[str]) -> list[Column]:
     """Return the columns of what stands beside the rates."""
     return [
-        *_keys(keys),
+        *key_columns(keys),
         Column("not a call", _text("not_a_call")),
         Column("open", _text("open")),
         Column("void", _text("void")),
@@ -182,7 +183,7 @@ BESIDE_GUIDE = (
 def error_columns(keys: Sequence[str]) -> list[Column]:
     """Return the columns of the table of forecast errors for groups by ``keys``."""
     return [
-        *_keys(keys),
+        *key_columns(keys),
         Column("forecast", _text("forecast"), "left"),
         Column("right", lambda row: f"{row['hits']} of {row['n']}"),
         Column("in %", lambda row: fraction(row["hit_rate"])),

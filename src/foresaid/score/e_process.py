@@ -229,7 +229,8 @@ def _log_wealth(stream: IntArray, steps: FloatArray) -> FloatArray:
     sums = np.concatenate([np.zeros((1, steps.shape[1])), np.cumsum(steps, axis=0)])
     products = sums[1:] - sums[np.searchsorted(stream, stream)]
     largest: FloatArray = products.max(axis=1)
-    return largest + np.log(np.exp(products - largest[:, None]).mean(axis=1))
+    means: FloatArray = np.exp(products - largest[:, None]).mean(axis=1)
+    return largest + np.log(means)
 
 
 def _begun(calls: TimedCalls, as_of: int) -> TimedCalls:

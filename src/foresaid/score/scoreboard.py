@@ -90,6 +90,7 @@ class GroupScore:
     n_timing: int
     timing_hits: int
     timing_expected: float | None
+    timing_deviation: float | None
     p_timing: float | None
     p_timing_low: float | None
     p_field: float | None
@@ -169,6 +170,7 @@ def score_record(
         n_timing=shifted.n if shifted else 0,
         timing_hits=shifted.hits if shifted else 0,
         timing_expected=shifted.mean if shifted else None,
+        timing_deviation=shifted.deviation if shifted else None,
         p_timing=shifted.p_upper if shifted else None,
         p_timing_low=shifted.p_lower if shifted else None,
         p_field=shifted.p_field if shifted else None,

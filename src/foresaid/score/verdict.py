@@ -27,8 +27,8 @@ class Shifted:
         Calls of the record that take part.
     hits : int
         How many of them were right.
-    mean : float
-        How many are on average over the shifts.
+    mean, deviation : float
+        How many are on average over the shifts, and their standard deviation.
     p_upper, p_lower : float
         Share of shifts with at least, and at most, as many.
     best_upper, best_lower : float
@@ -44,6 +44,7 @@ class Shifted:
     n: int
     hits: int
     mean: float
+    deviation: float
     p_upper: float
     p_lower: float
     best_upper: float

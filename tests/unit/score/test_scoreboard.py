@@ -143,7 +143,7 @@ def test_weights_count_in_the_weighted_rates_alone():
 
 def moved(hits, *, n=40, p_upper=0.5, p_lower=0.5):
     """Return where a record stands among a thousand shifts, and alone in its field."""
-    return Shifted(n, hits, 20.0, p_upper, p_lower, 0.001, 0.001, 1000, p_upper, p_lower, 1)
+    return Shifted(n, hits, 20.0, 3.0, p_upper, p_lower, 0.001, 0.001, 1000, p_upper, p_lower, 1)
 
 
 def test_verdicts_of_long_records():

@@ -21,6 +21,7 @@ SHIFTED = Shifted(
     n=40,
     hits=22,
     mean=20.5,
+    deviation=3.0,
     p_upper=0.4,
     p_lower=0.7,
     best_upper=0.001,
