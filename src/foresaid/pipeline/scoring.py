@@ -11,6 +11,7 @@ import pandas as pd
 from foresaid.claims.registry import NOT_A_CALL
 from foresaid.pipeline.groups import days, floats, grouped_calls, is_headline, is_scored
 from foresaid.pipeline.hurdles import BAND_COLUMNS, field_hurdles
+from foresaid.pipeline.watching import WATCH_COLUMNS, watched
 from foresaid.score.scoreboard import (
     GroupScore,
     Record,
@@ -80,18 +81,24 @@ def score_ledger(ledger: Ledger, by: Sequence[str], *, weighted: bool = False) -
     leans = leans_against(table)
     right = (table["result"] == "hit").to_numpy(dtype=bool) ^ leans
     hurdles = field_hurdles(ledger, found, right, leans, ranked)
-    rows = [
-        keys | _counts(part) | asdict(score_record(record, book, shifted)) | band
-        for (keys, _), part, record, shifted, band in zip(
-            found.groups, parts, records, hurdles.shifted, hurdles.band, strict=True
-        )
-    ]
+    as_of, level = found.settlement.as_of, book.verdict.level
+    rows = []
+    for at, (keys, numbers) in enumerate(found.groups):
+        score = asdict(score_record(records[at], book, hurdles.shifted[at]))
+        watching = watched(parts[at], leans[numbers], as_of=as_of, level=level)
+        rows.append(keys | _counts(parts[at]) | score | hurdles.band[at] | watching)
     return Scores(rows, found.settlement.as_of, book, found.stale, hurdles)
 
 
 def score_columns_of(by: Sequence[str]) -> list[str]:
     """Return the columns of a score row, in order."""
-    return [*by, *_COUNTS, *(field.name for field in fields(GroupScore)), *BAND_COLUMNS]
+    return [
+        *by,
+        *_COUNTS,
+        *(field.name for field in fields(GroupScore)),
+        *BAND_COLUMNS,
+        *WATCH_COLUMNS,
+    ]
 
 
 _COUNTS = (

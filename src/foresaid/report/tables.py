@@ -148,7 +148,17 @@ def beside_columns(keys: Sequence[str]) -> list[Column]:
         Column("stated", _text("n_probability")),
         Column("Brier", lambda row: decimal(row["brier"])),
         Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),
+        Column("evidence", _evidence),
     ]
+
+
+def _evidence(row: dict[str, Any]) -> str:
+    """Return the larger of the two e-values, with the day on which it passed."""
+    low = row["e_value_low"] > row["e_value"]
+    value = row["e_value_low"] if low else row["e_value"]
+    passed = row["e_passed_low_on"] if low else row["e_passed_on"]
+    shown = f"{value:,.0f}" if value >= 100 else f"{value:.1f}"
+    return shown + (" low" if low else "") + (f", {passed}" if passed else "")
 
 
 def has_something_beside(row: dict[str, Any]) -> bool:
@@ -161,6 +171,8 @@ def has_something_beside(row: dict[str, Any]) -> bool:
         "imputed_n",
         "withdrawn_n",
         "n_probability",
+        "e_passed_on",
+        "e_passed_low_on",
     )
     return any(row[name] for name in names)
 
@@ -176,7 +188,9 @@ BESIDE_GUIDE = (
     "Outside the rates: open and void calls, calls settled early whose date has not come, and "
     "calls without a stated date. Withdrawn calls count in the rates. stated: calls with a "
     "probability. Brier: mean squared distance of stated probabilities and outcomes, 0 is "
-    "best; skill: how much of the Brier score of chance is saved."
+    "best; skill: how much of the Brier score of chance is saved. evidence: an e-value that may "
+    "be looked at on any day, open calls counted as lost, and the day on which it first "
+    "reached one over the level; low: for worse than chance."
 )
 
 

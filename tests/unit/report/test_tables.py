@@ -30,6 +30,10 @@ ROW = {
     "p_coin": 0.2517,
     "p_base": 0.00001,
     "p_timing": 0.0123,
+    "e_value": 31.25,
+    "e_passed_on": "2025-03-14",
+    "e_value_low": 0.2,
+    "e_passed_low_on": None,
     "p_field": 0.5,
     "n_effective": 11,
     "weighted_hit_rate": 0.605,
@@ -58,6 +62,10 @@ EMPTY = {
     "p_coin": None,
     "p_base": None,
     "p_timing": None,
+    "e_value": 1.0,
+    "e_passed_on": None,
+    "e_value_low": 1.0,
+    "e_passed_low_on": None,
     "p_field": None,
     "n_effective": 0,
     "weighted_hit_rate": None,
@@ -151,6 +159,7 @@ def test_what_stands_beside():
         "stated": "4",
         "Brier": "0.234",
         "skill": "-0.06",
+        "evidence": "31.2, 2025-03-14",
     }
     assert has_something_beside(ROW)
     assert not has_something_beside(EMPTY)
