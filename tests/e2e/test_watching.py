@@ -24,6 +24,8 @@ def day(text):
 def bets(calls):
     """Return (start, end, chance, right or None) of every bet, in the order of betting."""
     found = []
+    # demo venues close at different hours, so a close elsewhere may have come before
+    mixed = len({row["instrument"] for row in calls} & {"MARB", "TESX", "BRLY", "PVRN"}) > 1
     for row in calls:
         stated = row["horizon_class"] != "undated"
         if row["outcome"] not in ("hit", "miss", "open") or not row["chance"] or not stated:
@@ -31,12 +33,12 @@ def bets(calls):
         against = bool(row["probability_high"]) and float(row["probability_high"]) < 0.5
         chance = float(row["chance"])
         start = day(row["reference_session"])
-        start -= row["first_session"] == row["reference_session"]
+        start -= mixed or row["first_session"] == row["reference_session"]
         right, end = None, AS_OF + 1
         if row["matured"] == "1":
             right, end = (row["outcome"] == "hit") != against, day(row["deadline_session"])
         found.append((start, end, 1 - chance if against else chance, right))
-    return sorted(found, key=lambda bet: bet[:3])
+    return sorted(found, key=lambda bet: (bet[0], bet[2]))
 
 
 def slow_path(calls, *, up):

@@ -15,7 +15,7 @@ if TYPE_CHECKING:
 
     import pandas as pd
 
-    from foresaid.model.bars import BoolArray
+    from foresaid.model.bars import BoolArray, IntArray
     from foresaid.score.e_process import Side
 
 WATCH_COLUMNS = ("e_value", "e_passed_on", "e_value_low", "e_passed_low_on")
@@ -63,18 +63,33 @@ def watch(
     ).to_numpy() & np.isfinite(floats(group["chance"]))
     rows, against = group[bet], leans[bet]
     today = day_number(as_of)
-    settled = is_scored(rows).to_numpy()
+    settled = is_scored(rows).to_numpy(dtype=bool)
     reference = days(rows["reference_session"])
-    # a path that begins with the reference session tells of the outcome on that very day
-    begins_at_once = (rows["first_session"] == rows["reference_session"]).to_numpy(dtype=bool)
-    ends = np.full(len(rows), today + 1, dtype=np.int64)
-    ends[settled] = days(rows["deadline_session"][settled])
+    # a path that begins with the reference session tells of the outcome on that very day, and
+    # so does a close elsewhere that came earlier on it
+    at_once = (rows["first_session"] == rows["reference_session"]).to_numpy(dtype=bool)
+    starts = reference - (at_once | (len(set(rows["closing"])) > 1))
+    ends = _ends(rows, settled, today)
     chance = floats(rows["chance"])
     calls = TimedCalls(
-        starts=reference - begins_at_once,
-        ends=ends,
+        starts=starts,
+        ends=np.maximum(ends, starts + 1),
         chances=np.where(against, 1.0 - chance, chance),
         right=(rows["result"] == "hit").to_numpy(dtype=bool) ^ against,
         settled=settled,
     )
     return e_process(calls, as_of=today, level=level, side=side)
+
+
+def _ends(rows: pd.DataFrame, settled: BoolArray, today: int) -> IntArray:
+    """Return the day on which each outcome is known, tomorrow while the window runs.
+
+    A call that is open for want of a price after its deadline is lost from then on, so that a
+    later answer changes nothing about the calls that came after it.
+    """
+    ends = np.full(len(rows), today + 1, dtype=np.int64)
+    due = rows["deadline"].fillna("9999").to_numpy(dtype=str)
+    overdue = ~settled & (due <= day_of(today).isoformat())
+    ends[overdue] = days(rows["deadline"][overdue])
+    ends[settled] = days(rows["deadline_session"][settled])
+    return ends

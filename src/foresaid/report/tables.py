@@ -188,8 +188,8 @@ BESIDE_GUIDE = (
     "Outside the rates: open and void calls, calls settled early whose date has not come, and "
     "calls without a stated date. Withdrawn calls count in the rates. stated: calls with a "
     "probability. Brier: mean squared distance of stated probabilities and outcomes, 0 is "
-    "best; skill: how much of the Brier score of chance is saved. evidence: an e-value that may "
-    "be looked at on any day, open calls counted as lost, and the day on which it first "
+    "best; skill: how much of the Brier score of chance is saved. evidence: an e-value that "
+    "may be looked at on any day, open calls counted as lost, and the day on which it first "
     "reached one over the level; low: for worse than chance."
 )
 

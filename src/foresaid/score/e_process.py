@@ -136,7 +136,7 @@ def e_process(
     the upper side, as right on the lower.
 
     Calls are split into streams without overlap (``split_into_streams``; among calls with the
-    same days the smaller chance comes first, then the earlier position). Stream :math:`j` from
+    same start the smaller chance comes first, then the earlier position). Stream :math:`j` from
     1 on has the weight :math:`1 / (j (j + 1))` and holds the mean over the odds factors of the
     product of its bets, 1 before it opens. The e-value is the weighted sum.
 
@@ -235,7 +235,7 @@ def _log_wealth(stream: IntArray, steps: FloatArray) -> FloatArray:
 
 def _begun(calls: TimedCalls, as_of: int) -> TimedCalls:
     """Return the calls that have started, sorted, none settled that ends after the day."""
-    order = np.lexsort((calls.chances, calls.ends, calls.starts))
+    order = np.lexsort((calls.chances, calls.starts))
     kept = order[calls.starts[order] <= as_of]
     return TimedCalls(
         calls.starts[kept],

@@ -32,10 +32,11 @@ def split_into_streams(starts: IntArray, ends: IntArray) -> IntArray:
 
     Notes
     -----
-    The windows are taken in order of start, then end, then position. Each goes to the first
-    stream whose last window ended at or before its start; where there is none, a new stream
-    opens. So a window may start on the day on which another one of its stream ends. The stream
-    of a window depends on no window that starts later.
+    The windows are taken in order of start, then position. Each goes to the first stream whose
+    last window ended at or before its start; where there is none, a new stream opens. So a
+    window may start on the day on which another one of its stream ends. The stream of a window
+    depends on nothing that happens after its start: on no window that starts later, nor on
+    when those that are open end.
 
     There are as many streams as the largest number of windows that overlap on one day.
 
@@ -58,7 +59,7 @@ def split_into_streams(starts: IntArray, ends: IntArray) -> IntArray:
     stream = np.zeros(len(first), dtype=np.int64)
     busy: list[tuple[int, int]] = []  # the last end of a stream, and its number
     free: list[int] = []
-    for row in np.lexsort((last, first)).tolist():
+    for row in np.argsort(first, kind="stable").tolist():
         while busy and busy[0][0] <= first[row]:
             heapq.heappush(free, heapq.heappop(busy)[1])
         stream[row] = heapq.heappop(free) if free else len(busy)

@@ -345,7 +345,10 @@ class _Work:
         before = windows.take(has_before)
         before = replace(before, reference=before.reference - 1)
         marks_before = self._bind(kind, rows[has_before], before)
-        hit = self._hits(kind.kernel, before, marks_before)
+        hit = self._hits(kind.kernel, before, marks_before).astype(np.int64)
+        bars, tolerance = self.market.bars, self.rules.tolerance
+        for unfit in kind.kernel.unsound(bars, before, marks_before, tolerance):
+            hit[unfit.rows] = NONE
         self.alternates[CLOSE_BEFORE][rows[has_before]] = hit
 
     def outcomes(self) -> Outcomes:
