@@ -126,6 +126,7 @@ def grouped_calls(ledger: Ledger, by: Sequence[str]) -> Grouped:
     table["desk"] = [desks[handle] for handle in table["forecaster"]]
     table["year"] = [text[:4] for text in table["said_at"]]
     table["weight"] = 1.0
+    table["went"] = 0
     closing = {
         symbol: f"{one.zone} {one.closes}"
         for symbol, (_, one) in queries.instruments(ledger).items()

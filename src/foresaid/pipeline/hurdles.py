@@ -20,8 +20,6 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
     from datetime import date
 
-    import pandas as pd
-
     from foresaid.chance.field import FieldTest, TimingTest
     from foresaid.chance.null_worlds import NullWorlds
     from foresaid.ledger.store import Ledger
@@ -57,15 +55,55 @@ class Hurdles:
     last_day: date | None
 
 
+@dataclass(frozen=True)
+class Headline:
+    """The calls in the headline scores, settled again.
+
+    ``rows`` are their rows of the table, in the order of ``again``.
+    """
+
+    rows: IntArray
+    again: Again
+
+    def went(self, n: int) -> IntArray:
+        """Return which way the price went from reference to deadline, 0 elsewhere; (n,)."""
+        windows, close = (
+            self.again.outcomes.resolved.windows,
+            self.again.world.market.bars.close,
+        )
+        result = np.zeros(n, dtype=np.int64)
+        if len(self.rows):
+            result[self.rows] = np.sign(close[windows.last] - close[windows.reference])
+        return result
+
+
+def settle_headline(ledger: Ledger, found: Grouped) -> Headline:
+    """Return the matured calls with a stated horizon, settled again as they were."""
+    rows = np.flatnonzero(is_headline(found.table).to_numpy(dtype=bool))
+    frame = queries.calls(ledger).set_index("call", drop=False)
+    again = settled(
+        ledger,
+        frame.loc[found.table["call"].iloc[rows].tolist()].reset_index(drop=True),
+        found.codebook,
+        as_of=found.settlement.as_of,
+        vintage=found.settlement.vintage,
+    )
+    return Headline(rows, again)
+
+
 def field_hurdles(
-    ledger: Ledger, found: Grouped, right: BoolArray, turned: BoolArray, ranked: Sequence[bool]
+    headline: Headline,
+    found: Grouped,
+    right: BoolArray,
+    turned: BoolArray,
+    ranked: Sequence[bool],
 ) -> Hurdles:
     """Return the hurdles of every group.
 
     Parameters
     ----------
-    ledger : Ledger
-        The ledger the groups come from.
+    headline : Headline
+        The calls that take part.
     found : Grouped
         All calls with their groups.
     right, turned : ndarray of bool, shape (n_rows,)
@@ -73,18 +111,11 @@ def field_hurdles(
     ranked : sequence of bool
         Which groups make up the field: those that may be judged, whatever came of their calls.
     """
-    record = np.full(len(found.table), -1, dtype=np.int64)
+    record = np.zeros(len(found.table), dtype=np.int64)
     for number, (_, rows) in enumerate(found.groups):
         record[rows] = number
-    headline = is_headline(found.table).to_numpy() & (record >= 0)
-    again = settled(
-        ledger,
-        _frame(ledger, found.table[headline]),
-        found.codebook,
-        as_of=found.settlement.as_of,
-        vintage=found.settlement.vintage,
-    )
-    worlds = _worlds(again, found, record[headline], right[headline], turned[headline])
+    own = headline.rows
+    worlds = _worlds(headline.again, found, record[own], right[own], turned[own])
     counts = _padded(worlds, len(found.groups))
     n_calls = np.zeros(len(found.groups), dtype=np.int64)
     n_calls[: len(worlds.n_calls)] = worlds.n_calls
@@ -99,12 +130,6 @@ def field_hurdles(
         first_day=None if is_empty else day_of(worlds.first_day),
         last_day=None if is_empty else day_of(worlds.last_day),
     )
-
-
-def _frame(ledger: Ledger, table: pd.DataFrame) -> pd.DataFrame:
-    """Return the calls of some rows as the ledger holds them, in the order of the rows."""
-    frame = queries.calls(ledger).set_index("call", drop=False)
-    return frame.loc[table["call"].tolist()].reset_index(drop=True)
 
 
 def _worlds(

@@ -17,7 +17,7 @@ from foresaid.score.power import (
     calls_needed,
     detectable_skill,
 )
-from foresaid.score.scoreboard import effective_n
+from foresaid.score.record import effective_n
 
 if TYPE_CHECKING:
     from foresaid.ledger.store import Ledger

@@ -10,15 +10,10 @@ import pandas as pd
 
 from foresaid.claims.registry import NOT_A_CALL
 from foresaid.pipeline.groups import days, floats, grouped_calls, is_headline, is_scored
-from foresaid.pipeline.hurdles import BAND_COLUMNS, field_hurdles
+from foresaid.pipeline.hurdles import BAND_COLUMNS, field_hurdles, settle_headline
 from foresaid.pipeline.watching import WATCH_COLUMNS, watched
-from foresaid.score.scoreboard import (
-    GroupScore,
-    Record,
-    is_long_enough,
-    is_one_sided,
-    score_record,
-)
+from foresaid.score.record import Record, is_long_enough, is_one_sided
+from foresaid.score.scoreboard import GroupScore, score_record
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -75,12 +70,14 @@ def score_ledger(ledger: Ledger, by: Sequence[str], *, weighted: bool = False) -
     table, book = found.table, found.codebook
     if weighted:
         table["weight"] = _weights(table, book)
+    headline = settle_headline(ledger, found)
+    table["went"] = headline.went(len(table))
     parts = [table.iloc[rows] for _, rows in found.groups]
     records = [record_of(part[is_headline(part)]) for part in parts]
     ranked = [is_long_enough(one, book) and not is_one_sided(one) for one in records]
     leans = leans_against(table)
     right = (table["result"] == "hit").to_numpy(dtype=bool) ^ leans
-    hurdles = field_hurdles(ledger, found, right, leans, ranked)
+    hurdles = field_hurdles(headline, found, right, leans, ranked)
     as_of, level = found.settlement.as_of, book.verdict.level
     rows = []
     for at, (keys, numbers) in enumerate(found.groups):
@@ -175,5 +172,6 @@ def record_of(rows: pd.DataFrame) -> Record:
         start=days(rows["reference_session"]),
         end=days(rows["deadline_session"]),
         direction=np.array([sides.get(side, 0) for side in rows["direction"]], dtype=np.int64),
+        went=rows["went"].to_numpy(dtype=np.int64),
         weight=floats(rows["weight"]),
     )

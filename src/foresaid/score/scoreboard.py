@@ -7,61 +7,23 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from foresaid.score.direction import (
+    direction_table,
+    henriksson_merton,
+    hit_less_false_alarm,
+    pesaran_timmermann,
+)
 from foresaid.score.overlap import disjoint_windows
 from foresaid.score.poisson_binomial import poisson_binomial_tails
 from foresaid.score.power import best_possible_p, calls_needed
 from foresaid.score.probability import brier_score_band, brier_skill
 from foresaid.score.proportions import binomial_tails, wilson_interval
+from foresaid.score.record import Record, effective_n, is_one_sided, pointing
 from foresaid.score.verdict import Evidence, Shifted, Verdict, verdict
 
 if TYPE_CHECKING:
-    from foresaid.model.bars import BoolArray, FloatArray, IntArray
+    from foresaid.model.bars import BoolArray, FloatArray
     from foresaid.model.codebook import Codebook
-
-
-@dataclass(frozen=True)
-class Record:
-    """The matured calls of one group; arrays (n,).
-
-    Attributes
-    ----------
-    came_true : ndarray of bool
-        Whether the claim as written came true.
-    leans_against : ndarray of bool
-        Whether the stated probability lies below one half, so that the forecaster was right
-        when the claim failed.
-    chance : ndarray of float
-        The chance of the claim as written, NaN where there is none.
-    probability_low, probability_high : ndarray of float
-        The stated probability or a word's band, NaN where none was stated.
-    instrument, start, end : ndarray of int
-        What the window is on, and its first and last day.
-    direction : ndarray of int
-        1 up, -1 down, 0 neither.
-    weight : ndarray of float
-        Class weights, all 1 unless weights were asked for.
-    """
-
-    came_true: BoolArray
-    leans_against: BoolArray
-    chance: FloatArray
-    probability_low: FloatArray
-    probability_high: FloatArray
-    instrument: IntArray
-    start: IntArray
-    end: IntArray
-    direction: IntArray
-    weight: FloatArray
-
-    @property
-    def right(self) -> BoolArray:
-        """Whether the forecaster was right."""
-        return np.not_equal(self.came_true, self.leans_against)
-
-    @property
-    def chance_right(self) -> FloatArray:
-        """The chance of being right with no skill, NaN where there is none."""
-        return np.where(self.leans_against, 1.0 - self.chance, self.chance)
 
 
 @dataclass(frozen=True)
@@ -98,6 +60,10 @@ class GroupScore:
     field_size: int
     shifts: int
     windows_disjoint: int
+    n_direction: int
+    hit_less_false_alarm: float | None
+    p_henriksson_merton: float | None
+    p_pesaran_timmermann: float | None
     n_probability: int
     brier: float | None
     brier_chance: float | None
@@ -140,6 +106,7 @@ def score_record(
     Examples
     --------
     >>> from foresaid.model.codebook import default_codebook
+    >>> from foresaid.score.record import empty_record
     >>> score_record(empty_record(), default_codebook()).verdict
     'too few to tell'
     """
@@ -152,6 +119,8 @@ def score_record(
     effective = effective_n(record)
     base = _base(record)
     brier = _brier(record)
+    directions = direction_table(pointing(record), record.went)
+    timed, skilled = henriksson_merton(directions), pesaran_timmermann(directions)
     said = _verdict(record, base, shifted, codebook)
     return GroupScore(
         n=n,
@@ -178,6 +147,12 @@ def score_record(
         field_size=shifted.field_size if shifted else 0,
         shifts=shifted.shifts if shifted else 0,
         windows_disjoint=disjoint_windows(record.start, record.end),
+        n_direction=directions.n,
+        hit_less_false_alarm=None
+        if directions.is_one_sided
+        else hit_less_false_alarm(directions),
+        p_henriksson_merton=timed.upper if timed else None,
+        p_pesaran_timmermann=skilled.p_upper if skilled else None,
         n_probability=brier.n,
         brier=brier.score,
         brier_chance=brier.chance,
@@ -187,12 +162,6 @@ def score_record(
         verdict=said.words,
         verdict_reason=said.reason,
     )
-
-
-def empty_record() -> Record:
-    """Return a record without calls."""
-    floats, whole, flags = np.zeros(0), np.zeros(0, dtype=np.int64), np.zeros(0, dtype=bool)
-    return Record(flags, flags, floats, floats, floats, whole, whole, whole, whole, floats)
 
 
 @dataclass(frozen=True)
@@ -244,110 +213,10 @@ def _brier_of(record: Record, rows: BoolArray) -> float:
     return brier_score_band(low, high, record.came_true[rows])
 
 
-def effective_n(record: Record) -> int:
-    """Return how many windows do not overlap, counted for each instrument apart.
-
-    Parameters
-    ----------
-    record : Record
-        The n calls, n may be 0.
-
-    Returns
-    -------
-    int
-
-    Raises
-    ------
-    ValueError
-        If a window ends before it starts.
-
-    References
-    ----------
-    See ``disjoint_windows``.
-
-    Examples
-    --------
-    >>> effective_n(empty_record())
-    0
-    """
-    total = 0
-    for number in np.unique(record.instrument):
-        own = record.instrument == number
-        total += disjoint_windows(record.start[own], record.end[own])
-    return total
-
-
 def _weighted(values: FloatArray, weight: FloatArray) -> float | None:
     known = np.isfinite(values)
     total = float(weight[known].sum())
     return float((values[known] * weight[known]).sum() / total) if total > 0 else None
-
-
-def is_one_sided(record: Record) -> bool:
-    """Return whether every call points the same way.
-
-    Parameters
-    ----------
-    record : Record
-        The n calls; False for none.
-
-    Returns
-    -------
-    bool
-        A call that leans against its claim points the other way; one without direction
-        keeps a record from being one-sided.
-
-    Raises
-    ------
-    ValueError
-        Never; the columns are those of a record.
-
-    References
-    ----------
-    Common practice, no source.
-
-    Examples
-    --------
-    >>> is_one_sided(empty_record())
-    False
-    """
-    pointing = np.where(record.leans_against, -record.direction, record.direction)
-    return len(pointing) > 0 and (bool((pointing > 0).all()) or bool((pointing < 0).all()))
-
-
-def is_long_enough(record: Record, codebook: Codebook) -> bool:
-    """Return whether a record may be judged and ranked at all.
-
-    Parameters
-    ----------
-    record : Record
-        The n calls.
-    codebook : Codebook
-        The minimum record.
-
-    Returns
-    -------
-    bool
-        It depends on which calls were made, never on how they came out.
-
-    Raises
-    ------
-    ValueError
-        If a window ends before it starts.
-
-    References
-    ----------
-    The minimum record is common practice, no source.
-
-    Examples
-    --------
-    >>> from foresaid.model.codebook import default_codebook
-    >>> is_long_enough(empty_record(), default_codebook())
-    False
-    """
-    rules = codebook.verdict
-    enough = min(len(record.came_true), int(np.isfinite(record.chance).sum()))
-    return enough >= rules.minimum_matured and effective_n(record) >= rules.minimum_disjoint
 
 
 def _verdict(

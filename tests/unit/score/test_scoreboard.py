@@ -5,14 +5,8 @@ import pytest
 from scipy import stats
 
 from foresaid.model.codebook import default_codebook
-from foresaid.score.scoreboard import (
-    GroupScore,
-    Record,
-    empty_record,
-    is_long_enough,
-    is_one_sided,
-    score_record,
-)
+from foresaid.score.record import Record, empty_record, is_long_enough, is_one_sided
+from foresaid.score.scoreboard import GroupScore, score_record
 from foresaid.score.verdict import Shifted
 
 BOOK = default_codebook()
@@ -31,6 +25,7 @@ def record(came_true, **columns):
         "start": 10 * np.arange(n),
         "end": 10 * np.arange(n) + 10,
         "direction": np.where(np.arange(n) % 2 == 0, 1, -1),
+        "went": np.zeros(n, dtype=np.int64),
         "weight": np.ones(n),
     }
     given = {name: np.asarray(column) for name, column in columns.items()}
@@ -45,7 +40,7 @@ def test_an_empty_record_has_counts_and_no_numbers():
     score = score_record(empty_record(), BOOK)
     assert score.verdict == "too few to tell"
     counts = {"n", "n_effective", "hits", "n_base", "n_probability", "n_timing"}
-    counts |= {"timing_hits", "field_size", "shifts", "windows_disjoint"}
+    counts |= {"timing_hits", "field_size", "shifts", "windows_disjoint", "n_direction"}
     for field in fields(GroupScore):
         value = getattr(score, field.name)
         if field.name in counts:
@@ -143,7 +138,9 @@ def test_weights_count_in_the_weighted_rates_alone():
 
 def moved(hits, *, n=40, p_upper=0.5, p_lower=0.5):
     """Return where a record stands among a thousand shifts, and alone in its field."""
-    return Shifted(n, hits, 20.0, 3.0, p_upper, p_lower, 0.001, 0.001, 1000, p_upper, p_lower, 1)
+    return Shifted(
+        n, hits, 20.0, 3.0, p_upper, p_lower, 0.001, 0.001, 1000, p_upper, p_lower, 1
+    )
 
 
 def test_verdicts_of_long_records():
@@ -178,6 +175,26 @@ def test_windows_of_several_instruments_overlap_in_time():
     twice = {"start": [0, 0, 10, 10], "end": [10, 10, 20, 20], "instrument": [0, 1, 0, 1]}
     score = scored([1, 1, 1, 1], **twice)
     assert (score.n_effective, score.windows_disjoint) == (4, 2)
+
+
+def test_direction_looks_at_what_the_price_did():
+    # 30 calls for a rise, 20 of them right; 20 for a fall, 15 right
+    said = np.repeat([1, -1], [30, 20])
+    went = np.concatenate([np.repeat([1, -1], [20, 10]), np.repeat([-1, 1], [15, 5])])
+    score = scored(said == went, direction=said, went=went)
+    assert score.n_direction == 50
+    assert score.hit_less_false_alarm == pytest.approx(20 / 25 - 10 / 25)
+    square = [[20, 10], [5, 15]]
+    wanted = stats.fisher_exact(square, "greater").pvalue
+    assert score.p_henriksson_merton == pytest.approx(wanted)
+    assert 0 < score.p_pesaran_timmermann < 0.01
+    # whoever says a fall is unlikely points up
+    leaning = scored(said != went, direction=-said, went=went, leans_against=np.ones(50, bool))
+    assert leaning.p_henriksson_merton == score.p_henriksson_merton
+    always = scored(said == went, direction=np.ones(50, dtype=np.int64), went=went)
+    assert always.p_henriksson_merton is None
+    assert always.p_pesaran_timmermann is None
+    assert always.hit_less_false_alarm is None
 
 
 def test_which_records_may_be_ranked():
