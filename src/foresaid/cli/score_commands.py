@@ -192,6 +192,33 @@ def errors(
         screen.print(text)
 
 
+def compare(
+    first: Annotated[str, typer.Argument(metavar="FIRST", help="A forecaster.")],
+    second: Annotated[str, typer.Argument(metavar="SECOND", help="Another one.")],
+    ledger: LedgerPath,
+    format_: OutputFormat = Format.table,
+) -> None:
+    """Compare two forecasters on the calls that both made.
+
+    Only matured calls on the same instrument with the same window count.
+
+    Example: foresaid compare a.lind b.kroll --ledger desk.foresaid
+    """
+    from foresaid.ledger.store import Ledger
+    from foresaid.pipeline.comparing import COMPARE_COLUMNS, compare_forecasters
+    from foresaid.report.cautions import CAUTIONS
+    from foresaid.report.comparisons import comparison_lines
+
+    with Ledger.open(ledger) as opened:
+        row = compare_forecasters(opened, first, second)
+    if format_ is not Format.table:
+        give_out([row], COMPARE_COLUMNS, format_)
+        return
+    screen = console()
+    for text in (*comparison_lines(row), "", *CAUTIONS):
+        screen.print(text)
+
+
 def _keys(by: str) -> list[str]:
     """Return the keys of ``--by``; ``all`` stands for none."""
     return [] if by.strip() == "all" else [key.strip() for key in by.split(",") if key.strip()]
@@ -208,3 +235,4 @@ def add_to(app: typer.Typer) -> None:
     app.command("trace")(trace)
     app.command("score")(score)
     app.command("errors")(errors)
+    app.command("compare")(compare)
