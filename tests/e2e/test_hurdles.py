@@ -7,6 +7,7 @@ from pathlib import Path
 import numpy as np
 import pandas as pd
 import pytest
+from statsmodels.stats.multitest import multipletests
 
 from support.desk import Desk, csv_rows, invoke
 
@@ -92,6 +93,32 @@ def test_timing_and_field_of_a_small_desk(desk):
         wanted = counts[name].mean() + band * counts[name].std()
         assert scores[name]["luck_high"] == pytest.approx(wanted, rel=1e-9)
     assert scores["carl"]["luck_high"] is None
+
+
+def test_numbers_of_a_larger_field(tmp_path):
+    """The demo's field: adjusted p-values by a library, shares that add up, ranks that nest."""
+    path = tmp_path / "demo.foresaid"
+    invoke("demo", "--ledger", path)
+    rows = json.loads(invoke("score", "--ledger", path, "--format", "json").stdout)
+    field = [row for row in rows if row["p_field"] is not None]
+    assert len(field) > 15
+    for hurdle in ("base", "timing"):
+        p = [row[f"p_{hurdle}"] for row in field]
+        for how, method in (("holm", "holm"), ("bh", "fdr_bh"), ("by", "fdr_by")):
+            wanted = multipletests(p, method=method)[1]
+            np.testing.assert_allclose([row[f"p_{hurdle}_{how}"] for row in field], wanted)
+    assert sum(row["p_best"] for row in field) == pytest.approx(1.0)
+    n = len(field)
+    assert sum(row["rank"] for row in field) == pytest.approx(n * (n + 1) / 2)
+    for row in field:
+        assert 1 <= row["rank_low"] <= row["rank_high"] <= n
+        rate = (row["timing_hits"] - row["timing_expected"]) / row["n_timing"]
+        assert row["excess_rate"] == pytest.approx(rate)
+        assert abs(row["shrunken_rate"]) <= abs(rate) + 0.05
+        shares = [row[f"share_{name}"] for name in ("none", "some", "negative")]
+        assert sum(shares) == pytest.approx(1.0)
+    apart = [row for row in rows if row["p_field"] is None]
+    assert all(row["rank"] is None and row["p_timing_holm"] is None for row in apart)
 
 
 def test_groups_of_one_person_are_a_field_of_their_own(desk):

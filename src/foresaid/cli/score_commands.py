@@ -149,6 +149,8 @@ def _show_field(screen: Console, keys: list[str], rows: list[dict[str, Any]]) ->
         shown = field.field_columns(keys)
         screen.print(make_table(shown, members, width=screen.width))
         screen.print(f"\n{field.FIELD_GUIDE}\n")
+        if field.shares_text(members[0]):
+            screen.print(f"{field.shares_text(members[0])}\n")
     apart = [row for row in rows if not field.in_field(row)]
     if apart:
         screen.print(field.APART_GUIDE)

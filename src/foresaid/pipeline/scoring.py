@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from foresaid.claims.registry import NOT_A_CALL
+from foresaid.pipeline.field_numbers import FIELD_COLUMNS, field_numbers
 from foresaid.pipeline.groups import days, floats, grouped_calls, is_headline, is_scored
 from foresaid.pipeline.hurdles import BAND_COLUMNS, field_hurdles, settle_headline
 from foresaid.pipeline.watching import WATCH_COLUMNS, watched
@@ -84,6 +85,8 @@ def score_ledger(ledger: Ledger, by: Sequence[str], *, weighted: bool = False) -
         score = asdict(score_record(records[at], book, hurdles.shifted[at]))
         watching = watched(parts[at], leans[numbers], as_of=as_of, level=level)
         rows.append(keys | _counts(parts[at]) | score | hurdles.band[at] | watching)
+    beside = field_numbers(rows, seed=book.chance.walks_seed)
+    rows = [row | more for row, more in zip(rows, beside, strict=True)]
     return Scores(rows, found.settlement.as_of, book, found.stale, hurdles)
 
 
@@ -95,6 +98,7 @@ def score_columns_of(by: Sequence[str]) -> list[str]:
         *(field.name for field in fields(GroupScore)),
         *BAND_COLUMNS,
         *WATCH_COLUMNS,
+        *FIELD_COLUMNS,
     ]
 
 

@@ -17,7 +17,8 @@ FIELD_GUIDE = (
     "deviation of the shifts. The line shows that excess in deviations, from -4 to 4: o is the "
     "record, the dashes are where the best and the worst of this field stay in 95 % of the "
     "shifts by luck alone. field: how often luck alone puts some record of the field as high "
-    "(or as low)."
+    "(or as low). rank: where 90 % of ranks lie once short records are pulled to the field's "
+    "mean."
 )
 APART_GUIDE = "Not ranked, because too short, one-sided or not to be moved along the calendar:"
 
@@ -68,8 +69,35 @@ def field_columns(keys: Sequence[str]) -> list[Column]:
         Column("excess", _excess),
         Column("worst and best by luck", line_of, "left"),
         Column("field", _own_tail),
+        Column("rank", _rank_interval),
         Column("verdict", lambda row: row["verdict"], "left", wraps=True),
     ]
+
+
+def _rank_interval(row: dict[str, Any]) -> str:
+    """Return the interval of the rank once unequal records are allowed for."""
+    if row["rank_low"] is None:
+        return "–"
+    return f"{row['rank_low']:.0f} to {row['rank_high']:.0f}"
+
+
+def shares_text(row: dict[str, Any]) -> str:
+    """Return what a field says about how many of it have skill, empty for a small field."""
+    if row["share_none"] is None:
+        return ""
+    parts = [
+        f"{100 * row[f'share_{name}']:.0f} % ({100 * row[f'share_{name}_low']:.0f} to "
+        f"{100 * row[f'share_{name}_high']:.0f}) {words}"
+        for name, words in (
+            ("none", "without skill"),
+            ("some", "with some"),
+            ("negative", "worse than chance"),
+        )
+    ]
+    return (
+        f"Of the field, by the timing hurdle: {', '.join(parts)}. An estimate for the whole, "
+        "too coarse to see one or two records; intervals of 95 %, too narrow where people herd."
+    )
 
 
 def _own_tail(row: dict[str, Any]) -> str:

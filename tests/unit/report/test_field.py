@@ -6,6 +6,7 @@ from foresaid.report.field import (
     in_field,
     line_of,
     ranked,
+    shares_text,
     standing,
 )
 
@@ -21,6 +22,17 @@ ROW = {
     "p_field_low": 0.97,
     "luck_low": 5.0,
     "luck_high": 13.0,
+    "rank_low": 2.0,
+    "rank_high": 9.0,
+    "share_none": 0.71,
+    "share_none_low": 0.5,
+    "share_none_high": 0.9,
+    "share_some": 0.2,
+    "share_some_low": 0.05,
+    "share_some_high": 0.4,
+    "share_negative": 0.09,
+    "share_negative_low": 0.0,
+    "share_negative_high": 0.2,
     "verdict": "no different from chance",
     "verdict_reason": "because",
 }
@@ -65,3 +77,15 @@ def test_the_best_comes_first_and_the_rest_stand_apart():
         "no different from chance",
         "because",
     ]
+
+
+def test_shares_of_the_field_in_words():
+    text = shares_text(ROW)
+    assert "71 % (50 to 90) without skill, 20 % (5 to 40) with some" in text
+    assert shares_text(ROW | {"share_none": None}) == ""
+    texts = {column.heading: column.text(ROW) for column in field_columns([])}
+    assert texts["rank"] == "2 to 9"
+    none = {
+        column.heading: column.text(ROW | {"rank_low": None}) for column in field_columns([])
+    }
+    assert none["rank"] == "–"
