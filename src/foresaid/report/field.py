@@ -65,11 +65,11 @@ def field_columns(keys: Sequence[str]) -> list[Column]:
     """Return the columns of the ranking for groups by ``keys``."""
     return [
         *key_columns(keys),
-        Column("right", lambda row: f"{row['timing_hits']} of {row['n_timing']}"),
+        Column("right", lambda row: f"{row['timing_hits']} of {row['n_timing']}", wide=True),
         Column("excess", _excess),
         Column("worst and best by luck", line_of, "left"),
         Column("field", _own_tail),
-        Column("rank", _rank_interval),
+        Column("rank", _rank_interval, wide=True),
         Column("verdict", lambda row: row["verdict"], "left", wraps=True),
     ]
 

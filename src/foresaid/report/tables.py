@@ -20,16 +20,18 @@ if TYPE_CHECKING:
 class Column:
     """One column: its heading, how a row becomes its text, and how it stands.
 
-    A column that wraps gives way on a narrow screen, so that the others stay whole.
+    A column that wraps gives way on a narrow screen, so that the others stay whole; one that
+    is ``wide`` is left out there.
     """
 
     heading: str
     text: Callable[[dict[str, Any]], str]
     justify: JustifyMethod = "right"
     wraps: bool = False
+    wide: bool = False
 
 
-NARROW = 100
+NARROW = 112
 LEAST = 9  # characters that a column which gives way keeps
 
 
@@ -37,8 +39,19 @@ def make_table(
     columns: Sequence[Column], rows: Iterable[dict[str, Any]], *, width: int
 ) -> Table:
     """Return a table for a screen of that width; text from the ledger is never markup."""
-    gap = 1 if width < NARROW else 2
-    table = Table(box=None, pad_edge=False, padding=(0, gap, 0, 0), header_style="bold")
+    is_narrow = width < NARROW
+    table = Table(
+        box=None,
+        pad_edge=False,
+        padding=(0, 1 if is_narrow else 2, 0, 0),
+        header_style="bold",
+        caption_style="none",
+        caption_justify="left",
+    )
+    left_out = [column.heading for column in columns if column.wide and is_narrow]
+    if left_out:
+        table.caption = f"Left out on a narrow screen: {', '.join(left_out)}."
+    columns = [column for column in columns if not (column.wide and is_narrow)]
     for column in columns:
         table.add_column(
             column.heading,
@@ -121,9 +134,9 @@ def score_columns(keys: Sequence[str], *, has_weights: bool) -> list[Column]:
     columns = [
         *key_columns(keys),
         Column("right", lambda row: f"{row['hits']} of {row['n']}"),
-        Column("in % (interval)", _interval),
+        Column("in % (interval)", _interval, wide=True),
         Column("chance", _by_chance),
-        Column("coin", lambda row: p_value(row["p_coin"])),
+        Column("coin", lambda row: p_value(row["p_coin"]), wide=True),
         Column("base", lambda row: p_value(row["p_base"])),
         Column("timing", lambda row: p_value(row["p_timing"])),
         Column("field", lambda row: p_value(row["p_field"])),
@@ -142,9 +155,9 @@ def beside_columns(keys: Sequence[str]) -> list[Column]:
         Column("not a call", _text("not_a_call")),
         Column("open", _text("open")),
         Column("void", _text("void")),
-        Column("early", _text("early")),
-        Column("undated right", _imputed),
-        Column("withdrawn right", _withdrawn),
+        Column("early", _text("early"), wide=True),
+        Column("undated right", _imputed, wide=True),
+        Column("withdrawn right", _withdrawn, wide=True),
         Column("stated", _text("n_probability")),
         Column("Brier", lambda row: decimal(row["brier"])),
         Column("skill", lambda row: decimal(row["brier_skill"], digits=2)),

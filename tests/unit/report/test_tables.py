@@ -243,3 +243,12 @@ def test_issue_lines(issue, line):
 def test_cautions_are_sentences():
     assert CAUTIONS
     assert all(text.endswith(".") for text in CAUTIONS)
+
+
+def test_wide_columns_give_way_on_a_narrow_screen():
+    columns = [Column("a", lambda row: "1"), Column("b", lambda row: "2", wide=True)]
+    narrow, wide = (make_table(columns, [{}], width=width) for width in (80, 120))
+    assert [str(column.header) for column in narrow.columns] == ["a"]
+    assert narrow.caption == "Left out on a narrow screen: b."
+    assert [str(column.header) for column in wide.columns] == ["a", "b"]
+    assert wide.caption is None
