@@ -19,7 +19,13 @@ from foresaid.pipeline.confirming import describe_query, queried_sessions
 from foresaid.pipeline.groups import listed_calls
 from foresaid.pipeline.listing import CALL_COLUMNS
 from foresaid.pipeline.settling import judge
-from foresaid.pipeline.trace_words import action_text, clock_text, price_text
+from foresaid.pipeline.trace_words import (
+    action_text,
+    chance_text,
+    clock_text,
+    loss_text,
+    price_text,
+)
 
 if TYPE_CHECKING:
     from foresaid.claims.kernels import Bound
@@ -138,9 +144,10 @@ class _Teller:
             ("actions", self._actions()),
             ("threshold", self._threshold()),
             ("arithmetic", self._arithmetic()),
-            ("prices in query", self._queries()),
+            ("loss", loss_text(self.kind.loss, row)),
+            ("in query", self._queries()),
             ("result", self._result()),
-            ("chance", self._chance()),
+            ("chance", chance_text(row, enough=self.book.chance.enough_windows)),
             ("flags", row["flags"] or "none"),
             ("withdrawn", self._withdrawn()),
             (
@@ -158,6 +165,9 @@ class _Teller:
             "decided": self.row["decided_session"],
             "deadline": self.row["deadline_session"],
         }
+        for at, position in enumerate(queried_sessions(self.judged, 0), 1):
+            day = day_of(int(self.market.bars.day[position])).isoformat()
+            wanted[f"in query {at}"] = day
         if self._extreme_session() is not None:
             wanted["nearest in the window"] = self._extreme_session()
         found = []
@@ -251,7 +261,10 @@ class _Teller:
     @property
     def _over(self) -> Over | None:
         bounds = self.kind.kernel.bounds
-        return bounds[0].over if bounds else None
+        if bounds:
+            return bounds[0].over
+        # what has a loss and no bounds is a distribution of the deadline close
+        return Over.END if self.kind.loss else None
 
     def _actions(self) -> str:
         """Return the corporate actions that bear on the result."""
@@ -281,8 +294,9 @@ class _Teller:
         ]
         if not found:
             return ""
-        bearing = "the answer hangs on them" if self.row["reason"] else "the answer is the same"
-        return "; ".join(found) + f"; without them {bearing}"
+        if self.row["reason"]:
+            return "; ".join(found) + "; the answer hangs on them"
+        return "; ".join(found) + "; without them the answer is the same"
 
     def _threshold(self) -> str:
         marks = self.judged.outcomes.marks[0]
@@ -373,24 +387,3 @@ class _Teller:
     def _result(self) -> str:
         row = self.row
         return str(row["result"]) + (f": {row['reason']}" if row["reason"] else "")
-
-    def _chance(self) -> str:
-        row = self.row
-        counted = (
-            f"the same claim came true from {row['chance_hits']} of {row['chance_windows']} "
-            f"earlier starts whose windows had ended before publication "
-            f"({row['chance_disjoint']} of them would not overlap)"
-        )
-        if row["chance"] is None:
-            return "none: " + ("too little history" if row["result"] != "void" else "void")
-        chance = f"{row['chance']:.6g}"
-        if row["chance_model"] == "history":
-            return f"{chance}: {counted}"
-        model = (
-            f"a driftless walk with a daily deviation of {row['chance_volatility']:.6g} gives "
-            f"{row['chance_modelled']:.6g}"
-        )
-        if row["chance_model"] == "volatility":
-            return f"{chance}: no earlier window; {model}"
-        weight = row["chance_disjoint"] / self.book.chance.enough_windows
-        return f"{chance}: {counted}; {model}; weight {weight:.3g} on the first"

@@ -246,7 +246,7 @@ def test_cautions_are_sentences():
 
 
 def test_wide_columns_give_way_on_a_narrow_screen():
-    columns = [Column("a", lambda row: "1"), Column("b", lambda row: "2", wide=True)]
+    columns = [Column("a", lambda _: "1"), Column("b", lambda _: "2", wide=True)]
     narrow, wide = (make_table(columns, [{}], width=width) for width in (80, 120))
     assert [str(column.header) for column in narrow.columns] == ["a"]
     assert narrow.caption == "Left out on a narrow screen: b."
