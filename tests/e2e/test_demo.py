@@ -267,6 +267,11 @@ def test_roles_are_found_out(by_forecaster):
     assert by_forecaster["e.vostrand"]["verdict"] == "not estimable"
     assert by_forecaster["e.vostrand"]["p_base"] < 0.001
     assert by_forecaster["m.tarrow"]["verdict"] == "ahead of chance"
+    # people who say the same thing at the same time are not as many findings
+    for follower in ("d.quorne", "j.tiverin", "l.hasveld", "o.brandrey", "s.pellory"):
+        assert by_forecaster[follower]["verdict"] == "no different from chance"
+    assert by_forecaster["m.tarrow"]["e_passed_on"] is not None
+    assert by_forecaster["e.vostrand"]["p_henriksson_merton"] is None
     assert by_forecaster["r.sundovar"]["brier_skill"] < 0.0
     assert by_forecaster["p.ambrask"]["brier_skill"] > 0.0
 
