@@ -576,3 +576,22 @@ def test_a_trace_waits_for_a_settlement_after_a_decision(desk):
     assert "decided since" in desk.run("trace", "C1", status=2).stderr
     desk.settle()
     assert "came true" in desk.run("trace", "C1").stdout
+
+
+@pytest.mark.parametrize(
+    ("claim", "told"),
+    [
+        ("beats ORVA", "`ORVA` is compared with itself"),
+        ("tops NELT, ORVA", "`ORVA` is compared with itself"),
+        ("beats NELTT", "`NELTT` is no known instrument"),
+        ("quantiles 10%=95, 5%=100", "percentages do not rise"),
+        ("bins <95: 20%, >95: 70%", "add up to 90"),
+    ],
+)
+def test_claims_that_cannot_be_judged(tmp_path, claim, told):
+    desk = Desk(tmp_path).stock()
+    row = ("C1", "t.mavren", "2025-03-03", "ORVA", claim, "2025-03-10")
+    message, *rest = desk.refuse("calls", table_text(CALL_HEADER, [row]))
+    assert len(rest) <= 1, "one fault, and that the file was refused"
+    assert told in message
+    assert "line 2, claim" in message

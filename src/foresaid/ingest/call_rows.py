@@ -202,9 +202,12 @@ class CallRow(RowReader):
         if claim is None or instrument is None:
             return
         for symbol in claim.others:
-            if symbol not in self.context.instruments or symbol == instrument.symbol:
+            if symbol == instrument.symbol:
+                message = f"`{clip(symbol)}` is compared with itself"
+                self.fault(column, "with-itself", message, "Name another instrument.")
+            elif symbol not in self.context.instruments:
                 close = nearest(symbol, self.context.instruments)
-                message = f"`{clip(symbol)}` is no other known instrument"
+                message = f"`{clip(symbol)}` is no known instrument"
                 hint = f"The nearest known is `{close}`." if close else "Import it first."
                 self.fault(column, "unknown-instrument", message, hint)
         kind = self.context.codebook.instrument_kinds[instrument.kind]
