@@ -118,17 +118,32 @@ def base_rates(
         earlier = earlier_windows(bars, starts, rows)
         if earlier is None:
             continue
+        known = earlier.known(bars, starts, rows)
+        marks, claim = distinct_rows(starts.marks[rows, :n_marks])
         block = max(1, CELLS // max(1, len(earlier.all)))
-        for begin in range(0, len(rows), block):
-            part = rows[begin : begin + block]
-            marks = starts.marks[part, :n_marks]
-            came_true = kernel.outcomes(bars, earlier.all, marks, tolerance)
-            known = np.arange(len(earlier.all)) < earlier.known(bars, starts, part)[:, None]
-            if not kernel.fits_anywhere:
-                known &= _fits(kernel, bars, earlier.all, marks, tolerance)
-            windows[part] = known.sum(axis=1)
-            hits[part] = (came_true & known).sum(axis=1)
+        for begin in range(0, len(marks), block):
+            own = marks[begin : begin + block]
+            fit = _fits(kernel, bars, earlier.all, own, tolerance)
+            came_true = kernel.outcomes(bars, earlier.all, own, tolerance) & fit
+            part = np.flatnonzero((claim >= begin) & (claim < begin + len(own)))
+            at = claim[part] - begin, known[part]
+            windows[rows[part]] = _counted(fit)[at]
+            hits[rows[part]] = _counted(came_true)[at]
     return BaseRate(windows, hits, disjoint_in_history(bars, starts))
+
+
+def distinct_rows(table: FloatArray) -> tuple[FloatArray, IntArray]:
+    """Return the different rows of a table, and which of them each row is; NaN equals NaN."""
+    filled = np.where(np.isnan(table), -np.inf, table)
+    _, first, which = np.unique(filled, axis=0, return_index=True, return_inverse=True)
+    return table[first], which.reshape(-1)
+
+
+def _counted(flags: BoolArray) -> IntArray:
+    """Return how many of the first k flags of each row are set, shape (m, n + 1)."""
+    counts = np.zeros((flags.shape[0], flags.shape[1] + 1), dtype=np.int32)
+    np.cumsum(flags, axis=1, dtype=np.int32, out=counts[:, 1:])
+    return counts
 
 
 def _fits(
@@ -136,6 +151,8 @@ def _fits(
 ) -> BoolArray:
     """Return at which windows each set of marks has a meaning, shape (m, n)."""
     fit = np.ones((len(marks), len(windows)), dtype=bool)
+    if kernel.fits_anywhere:
+        return fit
     for row, own in enumerate(marks):
         shared = np.broadcast_to(own, (len(windows), len(own)))
         for mask, *_ in kernel.unsound(bars, windows, shared, tolerance):

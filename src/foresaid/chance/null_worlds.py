@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
-from foresaid.chance.base_rate import CELLS, signatures
+from foresaid.chance.base_rate import CELLS, distinct_rows, signatures
 from foresaid.chance.shifts import ShiftedHits
 from foresaid.model.bars import Windows
 
@@ -244,8 +244,7 @@ def _blocks(
             keys = np.column_stack([own.marks[part], field.turned[members[part]]])
             if rules.volatility is not None:  # the same distance means something else then
                 keys = np.column_stack([keys, rules.volatility[own.reference[part] - 1]])
-            order = np.unique(np.nan_to_num(keys, nan=-np.inf), axis=0, return_inverse=True)[1]
-            order = order.reshape(-1)
+            _, order = distinct_rows(keys)
             size = max(1, CELLS // len(days))
             for begin in range(0, int(order.max()) + 1, size):
                 here = np.flatnonzero((order >= begin) & (order < begin + size))
