@@ -12,6 +12,7 @@ import json
 import sqlite3
 from dataclasses import replace
 from datetime import date, datetime
+from itertools import pairwise
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -101,7 +102,9 @@ def _walk(source, days, *, start, jumps, floor):
         )
         low = max(low, floor)
         if jumps and source.whole(0, 80) == 80:
-            high, low = source.pick(((high + start // 2, low), (high, max(low // 2, floor))))
+            high, low = source.pick(
+                ((high + start // 2, low), (high, min(low, max(low // 2, floor))))
+            )
         rows.append((close, high, low))
         if step > 3 and source.whole(0, 1):
             close = kept  # a leap that lasts for one session
@@ -173,7 +176,7 @@ def things(source, sizes, *, jumps=True, gaps=GAPS):
     if len({thing.currency for thing in found}) > 1 and source.whole(0, 9) < 9:
         begin = MONDAY - source.pick((7, 7, 7, 7, -14))  # a pair may come late
         days = _days(source, sizes[1], weekends=False, gaps=gaps, begin=begin)
-        walk = _walk(source, days, start=125, jumps=False, floor=20)
+        walk = _walk(source, days, start=125, jumps=source.pick((False, True)), floor=20)
         rows = _rows(source, days, walk, plain=True)
         base, term = source.pick((("KOR", "SEL"), ("SEL", "KOR")))
         found.append(
@@ -206,19 +209,16 @@ def with_actions(source, found):
     """Return the instruments in the units of their days, and their actions."""
     deeds, out, latest = [], [], {}
     shares = [thing for thing in found if thing.symbol.startswith("S")]
-    late = any(thing.kind == "pair" and thing.rows[0].day > MONDAY for thing in found)
     for thing in found:
         if thing not in shares or not source.whole(0, 2):
             out.append(thing)
             continue
         own = _steps(source, thing) + _halts(source, thing) + _dividends(source, thing)
-        if source.whole(0, 3) == 3 and not late:  # terms need a rate of their day
+        if source.whole(0, 3) == 3:
             others = [
                 one
                 for one in shares
-                if one.symbol > thing.symbol
-                and one.currency == thing.currency
-                and one.series != "total-return"
+                if one.symbol > thing.symbol and one.series != "total-return"
             ]
             own += _ending(source, thing, others, latest)
         end = min((d.day for d in own if d.kind in ENDINGS), default=10**9)
@@ -263,7 +263,7 @@ def _dividends(source, thing):
         return []
     days = {_some_day(source, thing) for _ in range(source.pick((0, 1, 3)))}
     return [
-        Deed(thing.symbol, day, "dividend", amount=source.pick((1.0, 2.0, 0.5)))
+        Deed(thing.symbol, day, "dividend", amount=source.pick((1.0, 2.0, 0.5, 0.0)))
         for day in sorted(days)
     ]
 
@@ -404,7 +404,7 @@ def _bins(source, level):
         edges.append(_number(level))
         level = round(level + source.pick((1.0, 2.0, 5.0)) * max(abs(level) / 100, 0.01), 4)
     parts = [f"<{edges[0]}: {shares[0]}%"]
-    for share, (a, b) in zip(shares[1:-1], zip(edges, edges[1:], strict=False), strict=True):
+    for share, (a, b) in zip(shares[1:-1], pairwise(edges), strict=True):
         parts.append(f"{a} to {b}: {share}%")
     parts.append(f">{edges[-1]}: {shares[-1]}%")
     return "bins " + ", ".join(parts)
@@ -518,9 +518,8 @@ def world(source, *, sizes, n_calls, gaps=GAPS):
     as_of = source.pick((last + 3, last, last + 1, last + 40, (first + 2 * last) // 3))
     confirmed = []
     for thing in found:
-        for row in thing.rows:
-            if row.high and row.high > row.close * 1.2 and not source.whole(0, 2):
-                confirmed.append((thing.symbol, row.day))
+        leaps = [row.day for row in thing.rows if row.high and row.high > row.close * 1.2]
+        confirmed += [(thing.symbol, day) for day in leaps if not source.whole(0, 2)]
     stated = [
         call
         for call in calls(source, found, n_calls)
@@ -697,7 +696,11 @@ def differences(one, listed, settler=None):
 
 # ----------------------------------------------------------------------------------- reducing
 def reduced(one, ref, differs):
-    """Return the smallest world found in which one call still differs."""
+    """Return the smallest world found in which one call still differs.
+
+    Where it takes the company of other calls, the world is returned as it is.
+    """
+    whole = one
     one = replace(one, calls=tuple(call for call in one.calls if call.ref == ref))
 
     def holds(candidate):
@@ -706,7 +709,9 @@ def reduced(one, ref, differs):
         except Exception:  # noqa: BLE001 - a world that cannot be settled is no witness
             return False
 
-    changed = True
+    changed = holds(one)
+    if not changed:
+        return whole
     while changed:
         changed = False
         for candidate in _smaller(one):
@@ -728,6 +733,10 @@ def _is_sound(one):
 
 def _smaller(one):
     """Yield worlds with something taken out, large pieces first."""
+    for call in one.calls:
+        for plainer in (replace(call, given="", decision=None), replace(call, currency="")):
+            if plainer != call:
+                yield replace(one, calls=(plainer,))
     for thing in one.things:
         yield replace(one, things=tuple(other for other in one.things if other is not thing))
     for name in ("deeds", "confirmed"):
@@ -759,4 +768,3 @@ def described(one, off):
     lines += [str(call) for call in one.calls]
     lines.append("slow settler, product: " + json.dumps(off, indent=1))
     return "\n".join(lines)
-

@@ -11,7 +11,7 @@ import math
 import re
 import statistics
 from dataclasses import dataclass, field, replace
-from datetime import UTC, date, datetime, timedelta
+from datetime import date, datetime, timedelta
 from zoneinfo import ZoneInfo
 
 TOLERANCE = 1e-9
@@ -134,11 +134,10 @@ class Answer:
 
 @dataclass(frozen=True)
 class Moment:
-    """A day with a minute of that day, or with none, and the same as an instant if known."""
+    """A day with a minute of that day, or with none."""
 
     day: int
     minute: float | None
-    instant: datetime | None = None
 
 
 @dataclass
@@ -153,7 +152,9 @@ class Line:
     ranged: list[bool] = field(default_factory=list)
     unit: list[float] = field(default_factory=list)  # a price times this is in first-day units
     total: list[float] = field(default_factory=list)
-    total_known: bool = False
+    total_until: int = -1  # a total column has no gap up to this day
+    total_since: int = 10**9  # the day of the first dividend on record
+    paid: list[tuple[int, float]] = field(default_factory=list)  # still to be reinvested
     halts: list[tuple[int, int]] = field(default_factory=list)
     stale: set[int] = field(default_factory=set)
     reach: int = -1
@@ -337,7 +338,7 @@ def read_moment(text: str, zone: str) -> Moment:
 def at_venue(moment: datetime, zone: str) -> Moment:
     """Return an instant as a day and a minute of the venue, as written where it has no zone."""
     local = moment.astimezone(ZoneInfo(zone)) if zone else moment
-    return Moment(*_local(local), moment.astimezone(UTC))
+    return Moment(*_local(local))
 
 
 def hours_of(thing: Thing) -> tuple[int, int]:
@@ -457,26 +458,32 @@ class SlowSettler:
             return None
         line = self.own_line(symbol, clean=clean)
         if pair is not None:
-            line = self.converted(line, pair, have)
+            line = self.converted(line, pair, have, clean=clean)
+        self.reinvest(line)
         if end is not None:
-            rate = 1.0 if pair is None else self.rate(pair, have, end.day)
+            rate = 1.0 if pair is None else self.rate(pair, have, end.day, clean=clean)
             self.append_terms(line, end, currency, rate=rate, clean=clean)
         return line
 
     def pair(self, have: str, want: str) -> Thing | None:
         """Return the pair of two currencies."""
         for thing in self.world.things:
-            if have != want and thing.kind == "pair" and {thing.base, thing.term} == {have, want}:
+            if (
+                have != want
+                and thing.kind == "pair"
+                and {thing.base, thing.term} == {have, want}
+            ):
                 return thing
         return None
 
-    def rate(self, pair: Thing, have: str, day: int) -> float | None:
+    def rate(self, pair: Thing, have: str, day: int, *, clean: bool) -> float | None:
         """Return units of the other currency for one of ``have``, None before the first."""
-        rates = self.line(pair.symbol, "", clean=False)
+        rates = self.line(pair.symbol, "", clean=clean)
         at = last_by(rates, day)
         if at is None:
             return None
-        return rates.close[at] if pair.base == have else 1 / rates.close[at]
+        price = rates.close[at] / rates.unit[at]
+        return price if pair.base == have else 1 / price
 
     def own_line(self, symbol: str, *, clean: bool) -> Line:
         """Return the sessions of an instrument in its own currency."""
@@ -502,7 +509,7 @@ class SlowSettler:
         in_file = [row.day for row in thing.rows if row.day <= self.world.as_of]
         line.reach = max((day for day in in_file if not end or day < end.day), default=-1)
         self.check_prices(line, clean=clean)
-        self.reinvest(line, rows)
+        self.place_totals(line, rows)
         return line
 
     def kept_rows(self, line: Line, end: Deed | None) -> list[Row]:
@@ -530,7 +537,10 @@ class SlowSettler:
         found = []
         for i, day in enumerate(line.day):
             bad = queries_at(line, i, additive=additive)
-            if any(bad) and (line.thing.symbol, day) not in self.world.confirmed:
+            before = line.day[i - 1] if i else -1
+            resumed = any(before < until <= day for _, until in line.halts)
+            known = resumed or (line.thing.symbol, day) in self.world.confirmed
+            if any(bad) and not known:
                 found.append((i, bad))
         line.queried = bool(found)
         if not clean:
@@ -552,25 +562,49 @@ class SlowSettler:
                 line.close[i] = before
                 line.swapped[i] = before / close if close else 1.0
 
-    def reinvest(self, line: Line, rows: list[Row]) -> None:
-        """Set the total return of an instrument, where it is known."""
+    def place_totals(self, line: Line, rows: list[Row]) -> None:
+        """Take the total returns of the file as far as they go, and note the dividends."""
         symbol = line.thing.symbol
-        dividends = self.deeds(symbol, "dividend")
+        found = self.deeds(symbol, "dividend")
+        dividends = [one for one in found if one.amount and not self.is_after_end(one)]
         if line.thing.series == "total-return":
-            line.total, line.total_known = list(line.close), True
-        elif rows and all(row.total is not None for row in rows):
-            line.total_known = True
-            line.total = [row.total * line.swapped.get(i, 1.0) for i, row in enumerate(rows)]
-        else:
-            line.total_known = bool(dividends)
-            shares, waiting = 1.0, list(dividends)
-            for i, day in enumerate(line.day):
-                while waiting and waiting[0].day <= day:
-                    paid = waiting.pop(0)
-                    if i or paid.day == day:
-                        amount = paid.amount * self.unit(symbol, paid.day)
-                        shares *= 1 + amount / line.close[i]
-                line.total.append(shares * line.close[i])
+            line.total, line.total_until = list(line.close), 10**9
+            return
+        if dividends:
+            line.total_since = dividends[0].day
+        line.total = list(line.close)
+        line.paid = [
+            (deed.day, deed.amount * self.unit(symbol, deed.day)) for deed in dividends
+        ]
+        if not rows or rows[0].total is None:
+            return
+        line.total_until = 10**9
+        for i, row in enumerate(rows):
+            if row.total is None and line.total_until == 10**9:
+                line.total_until = row.day - 1
+                line.paid = [one for one in line.paid if one[0] >= row.day]
+            filed = row.close * line.unit[i]
+            if line.total_until == 10**9:
+                line.total[i] = row.total * line.swapped.get(i, 1.0)
+                worth = row.total / filed
+            else:  # as the close does
+                line.total[i] = worth * line.close[i]
+        if line.total_until == 10**9:
+            line.paid = []
+
+    def is_after_end(self, deed: Deed) -> bool:
+        """Whether an action came when its instrument had ended."""
+        end = self.ending(deed.symbol)
+        return end is not None and deed.day >= end.day
+
+    def reinvest(self, line: Line) -> None:
+        """Reinvest the dividends that are on record at the closes of their sessions."""
+        shares, waiting = 1.0, list(line.paid)
+        for i, day in enumerate(line.day):
+            while waiting and waiting[0][0] <= day:
+                _, amount = waiting.pop(0)
+                shares *= 1 + amount / line.close[i]
+            line.total[i] *= shares
 
     def append_terms(
         self, line: Line, end: Deed, currency: str, *, rate: float | None, clean: bool
@@ -590,19 +624,22 @@ class SlowSettler:
             line.unit.append(unit)
             line.total.append(shares * close * unit)
 
-        cash = (end.amount or 0.0) * (rate or 0.0)
+        if end.amount and rate is None:
+            return  # the terms cannot be told in this currency
+        cash = end.amount * rate if end.amount else 0.0
         if end.kind != "merger":
-            if rate is not None:
-                add(end.day, cash, cash, cash, ranged=False)
+            add(end.day, cash, cash, cash, ranged=True)
             line.fixed, line.reach = True, end.day
             return
         into = self.line(end.into, currency, clean=clean)
+        if into is None:
+            return
         ratio = end.ratio / self.unit(end.into, end.day)
         for i, day in enumerate(into.day):
-            if day < end.day or rate is None:
+            if day < end.day:
                 continue
             worth = ratio * into.close[i] + cash
-            if into.total_known and i and day > end.day:
+            if i and day > end.day:
                 growth = into.total[i] / into.total[i - 1]
                 paid = into.close[i - 1] * growth - into.close[i]
                 shares *= 1 + ratio * paid / worth if worth else 1.0
@@ -619,11 +656,17 @@ class SlowSettler:
         line.halts += [(max(a, end.day), b) for a, b in into.halts if b > end.day]
         line.stale |= {day for day in into.stale if day >= end.day}
 
-    def converted(self, line: Line, pair: Thing, have: str) -> Line:
+    def converted(self, line: Line, pair: Thing, have: str, *, clean: bool) -> Line:
         """Return a line in another currency, from the first close of the pair on."""
-        out = replace(line, day=[], high=[], low=[], close=[], ranged=[], unit=[], total=[])
+        bare = {"day": [], "high": [], "low": [], "close": [], "ranged": [], "unit": []}
+        out = replace(line, **bare, total=[], paid=[])
+        out.queried = line.queried or self.line(pair.symbol, "", clean=clean).queried
+        for day, amount in line.paid:
+            rate = self.rate(pair, have, day, clean=clean)
+            paid = [] if rate is None else [(day, amount * rate)]
+            out.paid = [*out.paid, *paid]
         for i, day in enumerate(line.day):
-            rate = self.rate(pair, have, day)
+            rate = self.rate(pair, have, day, clean=clean)
             if rate is None:
                 continue
             out.day.append(day)
@@ -638,15 +681,15 @@ class SlowSettler:
     # ------------------------------------------------------------------------------ windows
     def reached(self, line: Line, day: int) -> bool:
         """Whether the close of a day, or of the session before it, is known."""
-        if line.fixed and day >= line.day[-1]:
+        if day <= line.reach or line.fixed:
             return True
-        if in_halt(line, day):
-            return day <= self.world.as_of
-        if day <= line.reach:
-            return True
-        if line.thing.kind == "coin" or line.reach < 0 or day > self.world.as_of:
+        if line.reach < 0 or day > self.world.as_of:
             return False
-        return all(_weekday(d) >= 5 for d in range(line.reach + 1, day + 1))
+        closed = line.thing.kind != "coin"
+        return all(
+            (closed and _weekday(one) >= 5) or in_halt(line, one)
+            for one in range(line.reach + 1, day + 1)
+        )
 
     def window(self, line: Line, start: Moment, deadline: int | None, sessions: int) -> Window:
         """Find the sessions that a call is about."""
@@ -668,9 +711,8 @@ class SlowSettler:
         if sessions:
             self.place_sessions(line, found, sessions)
         else:
-            self.place_date(line, found, need, deadline)
-        if self.is_missing(line, found, need):
-            found.last, found.result, found.reason = None, "open", MISSING
+            self.place_date(line, found, deadline)
+        self.mark_missing(line, found, need)
         return found
 
     def place_sessions(self, line: Line, found: Window, sessions: int) -> None:
@@ -690,7 +732,7 @@ class SlowSettler:
         else:
             found.reason = RUNS
 
-    def place_date(self, line: Line, found: Window, need: int, deadline: int) -> None:
+    def place_date(self, line: Line, found: Window, deadline: int) -> None:
         """Place a deadline that is a date."""
         if not self.reached(line, deadline):
             found.reason = RUNS if deadline > self.world.as_of else NO_DEADLINE_PRICE
@@ -713,23 +755,38 @@ class SlowSettler:
             and not in_halt(line, deadline)
             and not (line.fixed and last == len(line.day) - 1)
         ):
-            found.result, found.reason = "open", NO_DEADLINE_PRICE
+            found.reason = NO_DEADLINE_PRICE
             return
         found.last = last
 
-    def is_missing(self, line: Line, found: Window, need: int) -> bool:
-        """Whether the market traded on a day for which the file lacks a row."""
-        code = line.thing.market
-        if not code:
-            return False
-        spans = []
+    def mark_missing(self, line: Line, found: Window, need: int) -> None:
+        """Leave a call open for the rows that it needs and its file lacks.
+
+        Without its reference it cannot be judged. Where the deadline session is missing, it is
+        as if the window still ran.
+        """
+        due = found.deadline
+        is_due = due is not None and self.reached(line, due)
+        until = -1
         if found.reference is not None:
             until = line.day[found.reference] - 1
-            if found.deadline is not None:
-                until = min(until, found.deadline)
-            spans.append((need, until))
-        if found.last is not None and found.deadline is not None:
-            spans.append((line.day[found.last] + 1, found.deadline))
+            until = until if due is None else min(until, due)
+        elif is_due:
+            until = due
+        if self.is_missing(line, need, until):
+            found.last, found.result, found.reason = None, "open", MISSING
+            return
+        last = last_by(line, due) if is_due else None
+        begin = need if last is None else max(need, line.day[last] + 1)
+        if is_due and self.is_missing(line, begin, due):
+            found.last, found.result, found.reason = None, "", MISSING
+            found.end = -1 if last is None else last
+
+    def is_missing(self, line: Line, begin: int, until: int) -> bool:
+        """Whether the market traded on a day for which the file lacks a row."""
+        code = line.thing.market
+        if not code or begin > until:
+            return False
         own = self.line(line.thing.symbol, "", clean=False)
         for other in self.world.things:
             if other.market != code or other.symbol == line.thing.symbol:
@@ -742,7 +799,7 @@ class SlowSettler:
                     continue
                 if day in own.day or day in own.stale or in_halt(own, day):
                     continue
-                if any(a <= day <= b for a, b in spans):
+                if begin <= day <= until:
                     return True
         return False
 
@@ -758,7 +815,7 @@ class SlowSettler:
         if senseless:
             return Answer("void", senseless)
         if call.given:
-            start = self.started(call, said)
+            start = self.started(call)
             if isinstance(start, Answer):
                 return start
         deadline, sessions = deadline_of(call.horizon, start.day)
@@ -766,7 +823,9 @@ class SlowSettler:
             return Answer("void", TOO_LATE)
         answer = self.judged(call, claim, said, start, deadline, sessions)
         if call.horizon in IMPUTED:
-            for name, length in zip(("shorter", "longer"), IMPUTED[call.horizon][1:]):
+            for name, length in zip(
+                ("shorter", "longer"), IMPUTED[call.horizon][1:], strict=True
+            ):
                 other = self.judged(call, claim, said, start, *deadline_of(length, start.day))
                 kept = other.matured and other.result in ("hit", "miss")
                 answer.alternates[name] = other.result if kept else ""
@@ -791,7 +850,7 @@ class SlowSettler:
                 return UNCOUNTABLE
         return ""
 
-    def started(self, call: Said, said: Moment) -> Moment | Answer:
+    def started(self, call: Said) -> Moment | Answer:
         """Return when the clock of a conditional call starts, or what it came to without."""
         what, _, by = call.given.rpartition(" by ")
         zone = self.things[call.symbol].zone
@@ -933,7 +992,7 @@ class Job:
                 window.result, window.reason = "void", UNCOUNTABLE
             return
         every = all(leg.fixed for leg in legs)
-        if not every and window.deadline >= self.settler.world.as_of:
+        if not every and window.deadline > self.settler.world.as_of:
             window.result = "open"
             window.reason = NO_REFERENCE if window.reference is None else RUNS
 
@@ -1057,15 +1116,10 @@ class Job:
         edges = self.levels()
         place = 0
         for number, edge in enumerate(edges):
-            lowest, highest = number == 0, number == len(edges) - 1
             # the lowest edge belongs to the bin above it, and so does the only one
-            if self.near(price, edge, base):
-                above = lowest
-            else:
-                above = price > edge
+            above = number == 0 if self.near(price, edge, base) else price > edge
             if above:
                 place = number + 1
-            del highest
         return shares[place] == max(shares)
 
     def at_end(self, line: Line, last: int, base: float) -> Verdict:
@@ -1204,7 +1258,7 @@ class Job:
             return Verdict("void", NO_RETURN)
         begin = [last_by(leg, line.day[reference]) for leg in legs]
         known = zip(legs, begin, strict=True)
-        if any(at is None or leg.close[at] <= 0 for leg, at in known):
+        if any(at is None or self.was_over(leg, line.day[reference]) for leg, at in known):
             return Verdict("void", NO_LEG_REFERENCE)
         if window.last is None:
             return Verdict("open")
@@ -1213,7 +1267,9 @@ class Job:
             until = window.deadline
         if not all(self.settler.reached(leg, until) for leg in legs):
             return Verdict("open", NO_LEG_PRICE)
-        total = not by_price and all(one.total_known for one in (line, *legs))
+        total = not by_price and all(
+            until <= one.total_until or until >= one.total_since for one in (line, *legs)
+        )
         own = self.grown(line, reference, window.last, total=total)
         others = [
             self.grown(leg, at, last_by(leg, until), total=total)
@@ -1230,6 +1286,10 @@ class Job:
         verdict.tie = tie and strict
         verdict.measured = side * (lead + size)
         return verdict
+
+    def was_over(self, leg: Line, day: int) -> bool:
+        """Whether an instrument had come to an amount for good before a day."""
+        return leg.fixed and day > leg.day[-1]
 
     def grown(self, line: Line, begin: int, end: int, *, total: bool) -> float:
         worth = line.total if total else line.close

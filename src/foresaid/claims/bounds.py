@@ -186,10 +186,14 @@ def judge_side(bound: Bound, side: int, bars: Bars, windows: Windows, limits: Li
 
 def _moves(bars: Bars, windows: Windows, value: FloatArray) -> FloatArray:
     """Return the move from the reference, as a part of it or in points."""
-    reference = bars.close.take(windows.reference)
-    move = value - reference
+    return moves_from(bars.close.take(windows.reference), value, windows.additive)
+
+
+def moves_from(start: FloatArray, value: FloatArray, additive: BoolArray) -> FloatArray:
+    """Return moves from one price to another, as a part of it or in points; shape (n,)."""
+    move = value - start
     with np.errstate(divide="ignore", invalid="ignore"):
-        return np.where(windows.additive, move, move / reference)
+        return np.where(additive, move, move / start)
 
 
 def _measure(bound: Bound, side: int, prices: FloatArray, windows: Windows) -> FloatArray:

@@ -89,12 +89,20 @@ class Judged:
     tie: BoolArray
 
 
+Unsettled = Literal["void", "void once due", "open"]
+ONCE_DUE: Unsettled = "void once due"
+
+
 class Unfit(NamedTuple):
-    """Windows in which a claim cannot be judged: for good (void), or for want of prices."""
+    """Windows in which a claim cannot be judged, and what it is then.
+
+    It is void at once where no later session can give it a meaning, ``ONCE_DUE`` where one may
+    until the deadline session is known, and open for want of prices by then.
+    """
 
     rows: BoolArray
     reason: str
-    result: Literal["void", "open"] = "void"
+    result: Unsettled = "void"
 
 
 class Kernel(ABC):

@@ -7,8 +7,15 @@ from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
-from foresaid.claims.bounds import BoundKernel, Limits, extreme_of, judge_side, limits_of
-from foresaid.claims.kernels import Bound, Judged, Kernel, On, Over, Unfit
+from foresaid.claims.bounds import (
+    BoundKernel,
+    Limits,
+    extreme_of,
+    judge_side,
+    limits_of,
+    moves_from,
+)
+from foresaid.claims.kernels import ONCE_DUE, Bound, Judged, Kernel, On, Over, Unfit
 
 if TYPE_CHECKING:
     from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray, Windows
@@ -145,8 +152,7 @@ class OldExtremeKernel(Kernel):
         sides = np.full(len(level), self.side, dtype=np.int64)
         limits = Limits(sides, level, slack, level - slack * self.side)
         found = judge_side(self._bound, self.side, bars, windows, limits)
-        with np.errstate(divide="ignore", invalid="ignore"):
-            return replace(found, measured=found.value / level - 1.0)
+        return replace(found, measured=moves_from(level, found.value, windows.additive))
 
     @property
     def _bound(self) -> Bound:
@@ -189,7 +195,7 @@ class VolatilityKernel(Kernel):
         few = windows.last - windows.reference < FEWEST_MOVES
         lowest = extreme_of(bars.close, windows.reference, windows.last, largest=False)
         return [
-            Unfit(few, "too few sessions for a volatility"),
+            Unfit(few, "too few sessions for a volatility", ONCE_DUE),
             Unfit(lowest <= 0, "a price at or below zero has no volatility"),
         ]
 
@@ -197,17 +203,23 @@ class VolatilityKernel(Kernel):
 def window_volatility(bars: Bars, windows: Windows) -> FloatArray:
     """Return the annualised standard deviation of the daily log moves of each window.
 
-    Shape (n,), as fractions; NaN where there are fewer than two moves. Each window is summed
+    Shape (n,), as fractions; NaN where there are fewer than two moves or a price at or below
+    zero. Each window is summed
     by itself, so that nothing outside it counts.
     """
     n = windows.last - windows.reference
     first = np.minimum(windows.reference + 1, windows.last)
     with np.errstate(divide="ignore", invalid="ignore"):
-        moves = np.diff(np.log(np.maximum(bars.close, 0.0)), prepend=np.nan)
+        moves = np.diff(np.log(np.maximum(bars.close, 0.0)), prepend=0.0)
+    # stretches between the windows are summed as well: no sum may meet an infinity
+    has_none = ~np.isfinite(moves)
+    moves[has_none] = 0.0
+    lacking = np.concatenate(([0], np.cumsum(has_none)))
+    odd = lacking[windows.last + 1] > lacking[first]
     mean = _sum_of(moves, first, windows.last) / np.maximum(n, 1)
     spread = _sum_of(moves * moves, first, windows.last) - n * mean * mean
     variance = np.maximum(spread, 0.0) / np.maximum(n - 1, 1)
-    return np.where(n < FEWEST_MOVES, np.nan, np.sqrt(variance * SESSIONS_A_YEAR))
+    return np.where(odd | (n < FEWEST_MOVES), np.nan, np.sqrt(variance * SESSIONS_A_YEAR))
 
 
 def _sum_of(values: FloatArray, first: IntArray, last: IntArray) -> FloatArray:
@@ -239,7 +251,8 @@ class RaceKernel(Kernel):
         lost = other.hit & ~hit
         decided = np.where(hit, wanted.decided, np.where(lost, other.decided, windows.last))
         value = np.where(hit, wanted.value, np.where(lost, other.value, bars.close[decided]))
-        measured = np.where(hit, wanted.measured, other.measured)
+        reference = bars.close.take(windows.reference)
+        measured = moves_from(reference, value, windows.additive)
         return Judged(hit, decided, value, measured, hit | lost, np.zeros_like(hit))
 
     def _first_touch(

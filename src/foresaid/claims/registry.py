@@ -279,7 +279,8 @@ register(
         (HERE,),
         OldExtremeKernel(1),
         "none",
-        measures="the deciding close over the lowest close before the call, less 1",
+        measures="the move from the lowest close before the call to the deciding close, as a "
+        "part of it or in points",
         names_level=True,
     )
 )
@@ -290,7 +291,8 @@ register(
         (HERE,),
         OldExtremeKernel(-1),
         "none",
-        measures="the deciding close over the highest close before the call, less 1",
+        measures="the move from the highest close before the call to the deciding close, as a "
+        "part of it or in points",
         names_level=True,
     )
 )

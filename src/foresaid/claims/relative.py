@@ -61,8 +61,7 @@ class RelativeKernel(Kernel):
             calendar, over = bars.calendar(number), bars.over[number]
             start, _, had_ended = calendar.look_up(bars.day[windows.reference])
             before |= real & ((start < bars.offsets[number]) | (over & had_ended))
-            _, _, is_beyond = calendar.look_up(_until(bars, windows))
-            behind |= real & is_beyond & ~over
+            behind |= real & (_until(bars, windows) > bars.reach[number])
         return [
             Unfit(windows.additive, NO_RETURN),
             Unfit(before, "no price of a compared instrument at the reference"),
@@ -82,11 +81,12 @@ class RelativeKernel(Kernel):
         return result
 
     def uses_total(self, bars: Bars, windows: Windows) -> BoolArray:
-        """Return where total returns are known for every leg, shape (n,)."""
+        """Return where total returns are known for every leg by the end, shape (n,)."""
         number = np.searchsorted(bars.offsets, windows.reference, side="right") - 1
-        known = bars.total_known[number] & (not self.price_only)
+        until = _until(bars, windows)
+        known = bars.knows_total(number, until) & (not self.price_only)
         for leg, real in self._legs(windows):
-            known &= ~real | bars.total_known[np.where(real, leg, 0)]
+            known &= ~real | bars.knows_total(np.where(real, leg, 0), until)
         return known
 
     def _legs(self, windows: Windows) -> list[tuple[IntArray, BoolArray]]:

@@ -16,7 +16,8 @@ if TYPE_CHECKING:
     from foresaid.model.price_history import PriceHistory
     from foresaid.model.records import Action
 
-FAR = np.iinfo(np.int64).max
+FAR = int(np.iinfo(np.int64).max)
+THURSDAY, SATURDAY = 3, 5  # days of the week from Monday on; 1970-01-01 was a Thursday
 
 
 def without_stale(history: PriceHistory) -> PriceHistory:
@@ -78,3 +79,28 @@ def days_in(spans: IntArray, day: IntArray) -> BoolArray:
     at = np.searchsorted(spans[:, 0], day, side="right") - 1
     inside: BoolArray = (at >= 0) & (day < spans[np.maximum(at, 0), 1])
     return inside
+
+
+def reach_of(known_day: int, halts: IntArray, *, weekends: bool, today: int) -> int:
+    """Return the day up to which it is known what the last close was.
+
+    It is the last day with a row, and every day after it up to today on which no session can
+    have been: Saturdays and Sundays where the instrument does not trade then, days of a halt.
+
+    Examples
+    --------
+    >>> none = np.zeros((0, 2), dtype=np.int64)
+    >>> reach_of(1, none, weekends=False, today=30)  # 1970-01-02, a Friday
+    3
+    """
+    reach = known_day
+    while -FAR < reach < today:
+        day = reach + 1
+        inside = (halts[:, 0] <= day) & (day < halts[:, 1])
+        if inside.any():
+            reach = min(int(halts[inside, 1].max()) - 1, today)
+        elif not weekends and (day + THURSDAY) % 7 >= SATURDAY:
+            reach = day
+        else:
+            break
+    return reach

@@ -8,11 +8,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Sequence
+    from collections.abc import Iterable
 
+    from foresaid.market.lines import Line
     from foresaid.model.bars import FloatArray, IntArray
-    from foresaid.model.price_history import PriceHistory
-    from foresaid.model.records import Action, Instrument
+    from foresaid.model.records import Instrument
 
 
 @dataclass(frozen=True)
@@ -26,13 +26,22 @@ class Conversion:
     pair: Instrument
     divides: bool
 
-    def rates(self, history: PriceHistory, day: IntArray) -> FloatArray:
+    def rates(self, pair: Line, day: IntArray) -> FloatArray:
         """Return the rate known at each day: the pair's last close by then, NaN before all."""
-        at = np.searchsorted(history.day, day, side="right") - 1
-        if not len(history.day):
+        at = np.searchsorted(pair.day, day, side="right") - 1
+        if not len(pair.day):
             return np.full(len(day), np.nan)
-        rate = np.where(at >= 0, history.close[np.maximum(at, 0)], np.nan)
+        plain = pair.close / pair.factor
+        rate = np.where(at >= 0, plain[np.maximum(at, 0)], np.nan)
         return 1.0 / rate if self.divides else rate
+
+
+@dataclass(frozen=True)
+class Converted:
+    """Prices of the instrument ``symbol`` in another currency."""
+
+    symbol: str
+    conversion: Conversion
 
 
 def find_conversion(
@@ -53,40 +62,47 @@ def converted_name(symbol: str, currency: str) -> str:
     return f"{symbol} in {currency}"
 
 
-def convert_history(
-    history: PriceHistory, pair: PriceHistory, conversion: Conversion
-) -> PriceHistory:
-    """Return a history in the other currency; sessions before the pair's first are left out.
+def convert_line(
+    line: Line, pair: Line, conversion: Conversion, *, pair_number: int, also: int | None
+) -> Line:
+    """Return a line in the other currency; sessions before the pair's first are left out.
 
     High and low are converted at the same rate as the close, since a pair's path within the
-    day is not known.
+    day is not known. A dividend is converted at the rate of its effective day.
+
+    Parameters
+    ----------
+    line, pair : Line
+        The prices, and those of the pair.
+    conversion : Conversion
+        How the pair is quoted.
+    pair_number : int
+        Number of the pair, to tell where a rate in query stands.
+    also : int or None
+        Another day whose rate is used: that of the terms of an end.
     """
-    rates = conversion.rates(pair, history.day)
-    keep = np.isfinite(rates)
-    rates = rates[keep]
+    rates, paid_at = conversion.rates(pair, line.day), conversion.rates(pair, line.paid_day)
+    keep, known = np.isfinite(rates), np.isfinite(paid_at)
+    rates, kept = rates[keep], line.take(keep)
+    days = kept.day if also is None else np.append(kept.day, also)
     return replace(
-        history,
-        day=history.day[keep],
-        high=history.high[keep] * rates,
-        low=history.low[keep] * rates,
-        close=history.close[keep] * rates,
-        total=None if history.total is None else history.total[keep] * rates,
-        volume=None,
+        kept,
+        high=kept.high * rates,
+        low=kept.low * rates,
+        close=kept.close * rates,
+        total=kept.total * rates,
+        paid_day=line.paid_day[known],
+        paid=line.paid[known] * paid_at[known],
+        queries=np.concatenate((kept.queries, _rates_in_query(pair, pair_number, days))),
     )
 
 
-def convert_actions(
-    actions: Sequence[Action], pair: PriceHistory, conversion: Conversion, *, name: str
-) -> list[Action]:
-    """Return an instrument's actions under another name, amounts in the other currency."""
-    days = np.array([one.effective for one in actions], dtype="datetime64[D]").astype(np.int64)
-    rates = conversion.rates(pair, days)
-    return [
-        replace(
-            one,
-            instrument=name,
-            amount=None if one.amount is None else one.amount * float(rate),
-        )
-        for one, rate in zip(actions, rates, strict=True)
-        if one.amount is None or np.isfinite(rate)
-    ]
+def _rates_in_query(pair: Line, number: int, day: IntArray) -> IntArray:
+    """Return the days whose rate is a price in query, with where it stands; shape (q, 3)."""
+    if not len(pair.queries):
+        return np.zeros((0, 3), dtype=np.int64)
+    at = np.searchsorted(pair.day, day, side="right") - 1
+    day, of_rate = day[at >= 0], pair.day[at[at >= 0]]
+    inside = np.isin(of_rate, pair.queries[:, 0])
+    numbers = np.full(int(inside.sum()), number, dtype=np.int64)
+    return np.column_stack((day[inside], numbers, of_rate[inside]))

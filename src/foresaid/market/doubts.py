@@ -7,6 +7,7 @@ about a call that has been settled.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -26,20 +27,28 @@ class Doubts:
     Attributes
     ----------
     close, high, low : ndarray of bool, shape (n_bars,)
-        Which prices are in query.
+        Which prices are in query, at the sessions at which they stand in a file.
     bars : Bars
-        The same sessions with those prices replaced.
+        The same sessions with those prices replaced, and what rests on them.
+    session, origin : ndarray of int, shape (k,)
+        Positions of sessions whose prices rest on one in query, rising, and where that one
+        stands: the session itself, or one of the pair that converts its price, or of what the
+        instrument became.
     """
 
     close: BoolArray
     high: BoolArray
     low: BoolArray
     bars: Bars
+    session: IntArray
+    origin: IntArray
 
-    @property
+    @cached_property
     def any(self) -> BoolArray:
-        """Which sessions hold a price in query, shape (n_bars,)."""
-        return self.close | self.high | self.low
+        """Which sessions rest on a price in query, shape (n_bars,)."""
+        result = np.zeros(len(self.close), dtype=bool)
+        result[self.session] = True
+        return result
 
 
 def find_doubts(
@@ -81,7 +90,8 @@ def find_doubts(
         high, low = limits.exceeded(over, can_be), limits.exceeded(under, can_be)
     if not (close | high | low).any():
         return None
-    return Doubts(close, high, low, _without(bars, close, high, low))
+    own = np.flatnonzero(close | high | low)
+    return Doubts(close, high, low, _without(bars, close, high, low), own, own)
 
 
 def _scale(price: FloatArray, by_points: BoolArray) -> FloatArray:

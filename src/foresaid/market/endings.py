@@ -7,30 +7,30 @@ file from that session on are left aside.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 
+from foresaid.market.closures import FAR
 from foresaid.model.days import day_number
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
     from foresaid.market.actions import FactorSteps
-    from foresaid.model.bars import BoolArray, FloatArray, IntArray
+    from foresaid.market.lines import Line
+    from foresaid.model.bars import FloatArray, IntArray
     from foresaid.model.records import Action
 
 ENDING = ("cash-out", "merger", "wind-up")
-NEVER = np.iinfo(np.int64).max
+NEVER = FAR
 _PRICES = ("high", "low", "close")
-
-Columns = dict[str, Any]
 
 
 @dataclass(frozen=True)
 class Ending:
-    """How and when one instrument ends."""
+    """How and when one instrument ends; the amount is NaN where its currency has no rate."""
 
     day: int
     kind: str
@@ -50,16 +50,16 @@ def ending_of(actions: Sequence[Action], *, today: int) -> Ending | None:
 
 
 def with_endings(
-    columns: Mapping[str, Columns],
+    lines: Mapping[str, Line],
     endings: Mapping[str, Ending],
     steps: Mapping[str, FactorSteps],
-) -> dict[str, Columns]:
+) -> dict[str, Line]:
     """Return the histories of all instruments with those that end carried on.
 
     Parameters
     ----------
-    columns : mapping of str to dict
-        Arrays of each instrument in continuous units, by symbol.
+    lines : mapping of str to Line
+        Each instrument up to its end, by symbol.
     endings : mapping of str to Ending
         Only instruments that end.
     steps : mapping of str to FactorSteps
@@ -67,99 +67,115 @@ def with_endings(
 
     Returns
     -------
-    dict of str to dict
-        An instrument that became another one which ends itself follows it; a circle is left
-        where it is.
+    dict of str to Line
+        An instrument that became another one which ends itself follows it, with its halts and
+        stale rows. One that became none of these, or one that leads back to it, just stops.
     """
-    done: dict[str, Columns] = {}
+    done: dict[str, Line] = {}
 
-    def carried(symbol: str, chain: tuple[str, ...]) -> Columns:
+    def carried(symbol: str, chain: tuple[str, ...]) -> Line:
         if symbol not in done:
             ending = endings.get(symbol)
-            result = columns[symbol]
-            if ending is not None:
-                into = ending.into if ending.into in columns else ""
-                other = None
-                if into and into not in chain:
+            result = lines[symbol]
+            if ending is not None and np.isfinite(ending.amount):
+                into = ending.into
+                if not ending.ratio:
+                    added = _fixed(result, ending, steps[symbol])
+                    result = _join(result, added, ending.day)
+                elif into in lines and into not in (*chain, symbol):
                     other = carried(into, (*chain, symbol))
-                result = _carry(result, ending, steps[symbol], other, steps.get(into))
+                    added = _exchanged(ending, steps[symbol], other, steps[into])
+                    result = _join(result, added, ending.day)
             done[symbol] = result
         return done[symbol]
 
-    return {symbol: carried(symbol, ()) for symbol in columns}
+    return {symbol: carried(symbol, ()) for symbol in lines}
 
 
-def _carry(
-    own: Columns,
-    ending: Ending,
-    steps: FactorSteps,
-    other: Columns | None,
-    other_steps: FactorSteps | None,
-) -> Columns:
-    """Return one history cut at its ending and carried on at the terms."""
-    keep = int(np.searchsorted(own["day"], ending.day))
+def _fixed(own: Line, ending: Ending, steps: FactorSteps) -> Line:
+    """Return the one session of an amount for good."""
+    day = np.array([ending.day], dtype=np.int64)
+    factor = steps.at(day)
+    worth, none = np.full(1, ending.amount) * factor, np.zeros(0, dtype=np.int64)
+    return replace(
+        own,
+        day=day,
+        high=worth,
+        low=worth,
+        close=worth,
+        has_range=np.ones(1, dtype=bool),
+        factor=factor,
+        total=worth,
+        known_day=ending.day,
+        aside=none,
+        halts=none.reshape(0, 2),
+        over=True,
+        queries=none.reshape(0, 3),
+    )
+
+
+def _exchanged(
+    ending: Ending, steps: FactorSteps, other: Line, other_steps: FactorSteps
+) -> Line:
+    """Return the sessions of what an instrument became, at the terms of the exchange."""
     day = np.array([ending.day], dtype=np.int64)
     factor = float(steps.at(day)[0])
-    worth = {name: np.full(1, ending.amount) for name in _PRICES}
-    has_range, growth = np.ones(1, dtype=bool), np.ones(1)
-    if other is not None and other_steps is not None and ending.ratio:
-        begin = int(np.searchsorted(other["day"], ending.day))
-        scale = ending.ratio / float(other_steps.at(day)[0])
-        day, has_range = other["day"][begin:], other["has_range"][begin:]
-        worth = {name: other[name][begin:] * scale + ending.amount for name in _PRICES}
-        growth = _with_dividends(other, begin, scale, ending.amount)
-    close = worth["close"] * factor
-    last_total = own["total"][keep - 1] / own["close"][keep - 1] if keep else 1.0
-    added = {
-        "day": day,
-        **{name: worth[name] * factor for name in _PRICES},
-        "has_range": has_range,
-        "factor": np.full(len(day), factor),
-        "total": close * growth * last_total,
-    }
-    joined = {name: np.concatenate((own[name][:keep], added[name])) for name in added}
-    return own | joined
+    scale = ending.ratio / float(other_steps.at(day)[0])
+    rest = other.take(other.day >= ending.day)
+    worth = {name: getattr(rest, name) * scale + ending.amount for name in _PRICES}
+    shares = _with_dividends(other, ending.day, scale, worth["close"])
+    return replace(
+        rest,
+        high=worth["high"] * factor,
+        low=worth["low"] * factor,
+        close=worth["close"] * factor,
+        factor=np.full(len(rest.day), factor),
+        total=worth["close"] * factor * shares,
+        aside=rest.aside[rest.aside >= ending.day],
+        halts=_clipped(rest.halts, ending.day, FAR),
+    )
 
 
-def _with_dividends(other: Columns, begin: int, scale: float, amount: float) -> FloatArray:
-    """Return total-return worth over worth: what the successor paid since stays invested."""
-    close, total = other["close"][begin:], other["total"][begin:]
-    if not len(close):
-        return np.ones(0)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        paid = (total / total[0]) / (close / close[0])
-        worth = close * scale + amount
-        grown = (close * paid * scale + amount) / worth
-    return np.where(np.isfinite(grown), grown, 1.0)
+def _with_dividends(other: Line, day: int, scale: float, worth: FloatArray) -> FloatArray:
+    """Return total-return worth over worth, from the day of an exchange on.
 
-
-def days_of_terms(symbol: str, endings: Mapping[str, Ending]) -> list[int]:
-    """Return the days on which terms set the price of an instrument or of what it became."""
-    days: list[int] = []
-    seen: set[str] = set()
-    while symbol in endings and symbol not in seen:
-        seen.add(symbol)
-        days.append(endings[symbol].day)
-        symbol = endings[symbol].into
-    return days
-
-
-def are_over(symbols: Sequence[str], endings: Mapping[str, Ending]) -> BoolArray:
-    """Return which instruments have come to a fixed amount, so that no price can follow.
-
-    An instrument that became another one is over when that one is. Shape (n,).
+    What the successor pays after that day is a dividend of the old instrument too, reinvested
+    at what that one is worth by its terms.
     """
+    before, after = other.total[:-1], other.total[1:]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        paid = np.zeros(len(other.day))
+        paid[1:] = other.close[:-1] * (after / before) - other.close[1:]
+        growth = 1.0 + scale * np.where(other.day > day, paid, 0.0)[other.day >= day] / worth
+    grown: FloatArray = np.where(np.isfinite(growth), growth, 1.0)
+    return np.multiply.accumulate(grown)
 
-    def is_over(symbol: str) -> bool:
-        seen: set[str] = set()
-        while symbol in endings and symbol not in seen:
-            seen.add(symbol)
-            if endings[symbol].kind != "merger" or not endings[symbol].ratio:
-                return True
-            symbol = endings[symbol].into
-        return False
 
-    return np.array([is_over(symbol) for symbol in symbols], dtype=np.bool_)
+def _join(own: Line, added: Line, day: int) -> Line:
+    """Return one history up to its end, and on at the terms."""
+    has_close = len(own.day) and own.close[-1]
+    last_total = own.total[-1] / own.close[-1] if has_close else 1.0
+    return replace(
+        own,
+        day=np.concatenate((own.day, added.day)),
+        high=np.concatenate((own.high, added.high)),
+        low=np.concatenate((own.low, added.low)),
+        close=np.concatenate((own.close, added.close)),
+        has_range=np.concatenate((own.has_range, added.has_range)),
+        factor=np.concatenate((own.factor, added.factor)),
+        total=np.concatenate((own.total, added.total * last_total)),
+        known_day=max(own.known_day, added.known_day),
+        aside=np.concatenate((own.aside, added.aside)),
+        halts=np.concatenate((_clipped(own.halts, -FAR, day), added.halts)),
+        over=added.over,
+        queries=np.concatenate((own.queries, added.queries)),
+    )
+
+
+def _clipped(spans: IntArray, begin: int, end: int) -> IntArray:
+    """Return the parts of spans between two days, the later one excluded."""
+    inside = np.clip(spans, begin, end)
+    return inside[inside[:, 0] < inside[:, 1]]
 
 
 def ended_days(symbols: Sequence[str], endings: Mapping[str, Ending]) -> IntArray:

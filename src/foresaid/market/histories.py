@@ -2,166 +2,35 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from functools import cached_property
-from typing import TYPE_CHECKING, Any
+from dataclasses import replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from foresaid.market.actions import FactorSteps, factor_steps
-from foresaid.market.closures import FAR, days_in, halts_of, keep_rows
+from foresaid.market.actions import factor_steps
+from foresaid.market.closures import halts_of, reach_of
+from foresaid.market.currency import Converted, convert_line, converted_name
 from foresaid.market.doubts import Doubts, find_doubts
-from foresaid.market.endings import (
-    NEVER,
-    are_over,
-    days_of_terms,
-    ended_days,
-    ending_of,
-    with_endings,
-)
-from foresaid.model.bars import Bars, concatenate_bars
+from foresaid.market.endings import NEVER, ended_days, ending_of, with_endings
+from foresaid.market.known import Market, Venue
+from foresaid.market.lines import line_of, reinvested, without_query
+from foresaid.model.bars import concatenate_bars
 from foresaid.model.days import day_number
+from foresaid.model.price_history import PriceHistory
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
     from datetime import date
 
-    from foresaid.market.endings import Ending
-    from foresaid.model.bars import BoolArray, FloatArray, IntArray
+    from foresaid.market.lines import Line
+    from foresaid.model.bars import Bars, BoolArray, IntArray
     from foresaid.model.codebook import Codebook
-    from foresaid.model.price_history import PriceHistory
     from foresaid.model.records import Action, Instrument
-
-
-@dataclass(frozen=True)
-class Venue:
-    """What settlement needs to know of each instrument; arrays (n_instruments,).
-
-    Attributes
-    ----------
-    opens, closes : ndarray of int
-        Local minutes after midnight.
-    hours_known : ndarray of bool
-        Whether the hours are the instrument's own, not the codebook's default.
-    additive : ndarray of bool
-        Whether prices are compared by difference.
-    weekends : ndarray of bool
-        Whether it trades on Saturdays and Sundays.
-    total_return : ndarray of bool
-        Whether its only prices are a total-return series, which has no levels.
-    market : ndarray of str
-        Market code, empty where it is not known; instruments of one market share its days.
-    """
-
-    opens: IntArray
-    closes: IntArray
-    hours_known: BoolArray
-    additive: BoolArray
-    weekends: BoolArray
-    total_return: BoolArray
-    market: np.ndarray[Any, np.dtype[np.object_]]
-
-
-@dataclass(frozen=True)
-class Market:
-    """Everything known about prices on one day, in one vintage.
-
-    Attributes
-    ----------
-    bars, venue : Bars, Venue
-        Prices in continuous units, and what is known of each instrument.
-    steps : tuple of FactorSteps
-        Factors of each instrument.
-    as_of_day : int
-        The day, since 1970-01-01.
-    ended_day : ndarray of int, shape (n_instruments,)
-        When an instrument ended, far in the future for those that go on.
-    known_day : ndarray of int, shape (n_instruments,)
-        The last day with a row in the file, a session or not; far in the past without any.
-    aside : tuple of ndarray of int
-        Days of rows of each instrument that were left aside, rising.
-    halts : tuple of ndarray of int, shape (k, 2)
-        First day of each halt and the day trading resumed.
-    doubts : Doubts or None
-        Prices in query, None where there are none.
-    """
-
-    bars: Bars
-    venue: Venue
-    steps: tuple[FactorSteps, ...]
-    as_of_day: int
-    ended_day: IntArray
-    known_day: IntArray
-    aside: tuple[IntArray, ...]
-    halts: tuple[IntArray, ...]
-    doubts: Doubts | None = None
-
-    @property
-    def is_over(self) -> BoolArray:
-        """Whether each instrument came to a fixed amount, shape (n_instruments,)."""
-        return self.bars.over
-
-    @cached_property
-    def has_endings(self) -> bool:
-        """Whether any instrument has ended."""
-        return bool((self.ended_day < NEVER).any())
-
-    @cached_property
-    def longest_gap(self) -> int:
-        """The most days from a session to the next one, or to the last row of a file."""
-        tails = np.where(self.bars.last_day > -FAR // 2, self.known_day - self.bars.last_day, 0)
-        return max(self.bars.longest_gap, int(tails.max(initial=0)))
-
-    @cached_property
-    def halted(self) -> IntArray:
-        """The numbers of the instruments that were ever halted."""
-        return np.flatnonzero([len(spans) > 0 for spans in self.halts]).astype(np.int64)
-
-    def is_halted(self, instrument: IntArray, day: IntArray) -> BoolArray:
-        """Return where trading was halted on a day that has passed, shape (n,)."""
-        result = np.zeros(len(day), dtype=bool)
-        for number in self.halted:
-            rows = np.flatnonzero((instrument == number) & (day <= self.as_of_day))
-            result[rows] = days_in(self.halts[number], day[rows])
-        return result
-
-    def halts_between(
-        self, instrument: IntArray, after: IntArray, until: IntArray
-    ) -> BoolArray:
-        """Return where a halt lies on any day later than one and no later than another."""
-        result = np.zeros(len(instrument), dtype=bool)
-        for number in self.halted:
-            rows = np.flatnonzero(instrument == number)
-            for begin, resumed in self.halts[number]:
-                result[rows] |= (begin <= until[rows]) & (resumed > after[rows] + 1)
-        return result
-
-    def level_factor(self, instrument: IntArray, day: IntArray) -> FloatArray:
-        """Return continuous price over a price stated on that day, shape (n,)."""
-        result = np.ones(len(day))
-        for number in np.unique(instrument):
-            rows = instrument == number
-            result[rows] = self.steps[number].at(day[rows])
-        return result
-
-    def in_file_units(self, price: FloatArray, positions: IntArray) -> FloatArray:
-        """Return continuous prices as they stand in the file, shape (n,).
-
-        Undoing a factor, a conversion or an exchange may leave an error in the last places:
-        a price that 12 significant digits state but for that error is given with those.
-        """
-        factor = self.bars.factor[positions]
-        plain = price / factor
-        with np.errstate(divide="ignore", invalid="ignore"):
-            places = np.power(10.0, 11.0 - np.floor(np.log10(np.abs(plain))))
-            short = np.where(np.isfinite(places), np.round(plain * places) / places, plain)
-        noise = 8.0 * np.finfo(np.float64).eps * np.abs(plain)
-        return np.where(np.abs(short - plain) <= noise, short, plain)
 
 
 def build_market(
     instruments: Sequence[Instrument],
-    histories: Mapping[str, PriceHistory],
+    histories: Mapping[str, PriceHistory | Converted],
     actions: Sequence[Action],
     series: Mapping[str, str],
     codebook: Codebook,
@@ -174,162 +43,214 @@ def build_market(
     ----------
     instruments : sequence of Instrument
         Their order becomes the instrument number.
-    histories : mapping of str to PriceHistory
-        By symbol; an instrument without prices may be absent.
+    histories : mapping of str to PriceHistory or Converted
+        By symbol; an instrument without prices may be absent. Instruments that are the prices
+        of another one in another currency come after all others.
     actions : sequence of Action
         Splits and rebases become factors, dividends total returns; an instrument that ends
         goes on at its terms.
     series : mapping of str to str
         What the prices are: raw (the default), split-adjusted or total-return. Split-adjusted
-        prices are in the units of the last session of the file.
+        prices are in the units of the last row of the file.
     codebook : Codebook
         Behaviour of the instrument kinds.
     as_of : date
         Sessions after this day are left out.
     """
     today = day_number(as_of)
-    by_symbol: dict[str, list[Action]] = {one.symbol: [] for one in instruments}
-    for action in actions:
-        by_symbol[action.instrument].append(action)
-    steps = tuple(factor_steps(by_symbol[one.symbol]) for one in instruments)
-    kinds = np.array([series.get(one.symbol, "raw") for one in instruments], dtype=object)
-    symbols = [one.symbol for one in instruments]
-    known = {
-        symbol: [one for one in by_symbol[symbol] if one.effective <= as_of]
-        for symbol in symbols
-    }
-    halts = tuple(halts_of(by_symbol[symbol], today=today) for symbol in symbols)
-    rows = {
-        symbol: _traded(histories[symbol], spans)
-        for symbol, spans in zip(symbols, halts, strict=True)
-        if symbol in histories
-    }
-    columns = {
-        symbol: _columns(rows.get(symbol), step, kind, known[symbol], today)
-        for symbol, step, kind in zip(symbols, steps, kinds, strict=True)
-    }
-    found = {symbol: ending_of(known[symbol], today=today) for symbol in symbols}
-    endings = {symbol: one for symbol, one in found.items() if one is not None}
-    columns = with_endings(columns, endings, dict(zip(symbols, steps, strict=True)))
-    over = are_over(symbols, endings)
-    bars = concatenate_bars(
-        symbols,
-        [columns[one] | {"over": is_over} for one, is_over in zip(symbols, over, strict=True)],
-    )
-    venue = _venue(instruments, kinds == "total-return", codebook)
-    right = _settled_sessions(bars, rows, halts, endings)
+    converted = {name: one for name, one in histories.items() if isinstance(one, Converted)}
+    files = {name: one for name, one in histories.items() if isinstance(one, PriceHistory)}
+    facts = _Facts(instruments, actions, series, converted, today)
+    filed = facts.lines_of(files)
+    venue = _venue(instruments, facts.total_return, codebook)
+    symbols = list(filed)
+    bars = concatenate_bars(symbols, [line.columns() for line in filed.values()])
+    right = _settled_sessions(bars, filed, files)
+    additive = venue.additive[: len(symbols)]
+    found = find_doubts(bars, additive, right, codebook.settlement)
+    if found is not None:
+        filed = _with_queries(filed, found)
+    lines = facts.carried_on(filed)
+    reach = [
+        NEVER
+        if line.over
+        else reach_of(line.known_day, line.halts, weekends=bool(weekends), today=today)
+        for line, weekends in zip(lines.values(), venue.weekends, strict=True)
+    ]
+    bars = _bars_of(lines, reach)
+    doubts = None
+    if found is not None:
+        clean = _bars_of(facts.carried_on(_cleaned(filed, found)), reach)
+        doubts = _doubts_of(found, bars, clean, lines)
     return Market(
         bars,
         venue,
-        steps,
+        tuple(facts.steps.values()),
         today,
-        ended_days(symbols, endings),
-        np.array([_last_row(histories.get(one), today) for one in symbols], dtype=np.int64),
-        tuple(rows[one].aside if one in rows else _NO_DAYS for one in symbols),
-        halts,
-        find_doubts(bars, venue.additive, right, codebook.settlement),
+        ended_days(list(lines), facts.endings),
+        facts.file_of,
+        tuple(line.aside for line in lines.values()),
+        tuple(line.halts for line in lines.values()),
+        doubts,
     )
 
 
-_NO_DAYS = np.zeros(0, dtype=np.int64)
+class _Facts:
+    """What is known of each instrument besides its prices, by symbol."""
+
+    def __init__(
+        self,
+        instruments: Sequence[Instrument],
+        actions: Sequence[Action],
+        series: Mapping[str, str],
+        converted: Mapping[str, Converted],
+        today: int,
+    ) -> None:
+        self.today, self.converted = today, converted
+        self.number = {one.symbol: i for i, one in enumerate(instruments)}
+        self.currency = {one.symbol: one.currency for one in instruments}
+        own = {one.symbol: one.symbol for one in instruments}
+        own |= {name: one.symbol for name, one in converted.items()}
+        self.own = own
+        by_symbol: dict[str, list[Action]] = {symbol: [] for symbol in own}
+        for action in actions:
+            by_symbol[action.instrument].append(action)
+        self.kinds = {symbol: series.get(one, "raw") for symbol, one in own.items()}
+        # what a total-return series says is as it is
+        self.steps = {
+            symbol: factor_steps([] if self.kinds[one] == "total-return" else by_symbol[one])
+            for symbol, one in own.items()
+        }
+        self.actions = {
+            symbol: [one for one in by_symbol[symbol] if day_number(one.effective) <= today]
+            for symbol in own
+        }
+        self.endings = {}
+        for symbol, one in own.items():
+            ending = ending_of(self.actions[one], today=today)
+            if ending is not None:
+                into = self._in_currency(ending.into, self.currency[symbol])
+                self.endings[symbol] = replace(ending, into=into)
+
+    def _in_currency(self, symbol: str, currency: str) -> str:
+        """Return whose prices are those of an instrument in a currency, empty for none."""
+        theirs = self.currency.get(symbol, "")
+        if not theirs or not currency or theirs == currency:
+            return symbol
+        name = converted_name(symbol, currency)
+        return name if name in self.converted else ""
+
+    @property
+    def total_return(self) -> BoolArray:
+        """Whether each series is one of total returns, shape (n,)."""
+        return np.array([kind == "total-return" for kind in self.kinds.values()], dtype=bool)
+
+    @property
+    def file_of(self) -> IntArray:
+        """The number of the instrument in whose file the prices stand, shape (n,)."""
+        return np.array([self.number[own] for own in self.own.values()], dtype=np.int64)
+
+    def lines_of(self, histories: Mapping[str, PriceHistory]) -> dict[str, Line]:
+        """Return the sessions of each file up to today or the end of its instrument."""
+        lines = {}
+        for symbol, own in self.own.items():
+            if symbol != own:
+                continue
+            ending = self.endings.get(symbol)
+            until = self.today if ending is None else ending.day - 1
+            lines[symbol] = line_of(
+                histories.get(symbol),
+                self.steps[symbol],
+                self.kinds[symbol],
+                self.actions[symbol],
+                halts_of(self.actions[symbol], today=self.today),
+                until,
+            )
+        return lines
+
+    def carried_on(self, filed: Mapping[str, Line]) -> dict[str, Line]:
+        """Return the lines of all instruments: converted, and carried on where they end."""
+        lines, endings = dict(filed), dict(self.endings)
+        for name, one in self.converted.items():
+            pair, ending = one.conversion.pair.symbol, endings.get(name)
+            lines[name] = convert_line(
+                filed[one.symbol],
+                filed[pair],
+                one.conversion,
+                pair_number=self.number[pair],
+                also=None if ending is None else ending.day,
+            )
+            if ending is not None and ending.amount:
+                rate = one.conversion.rates(filed[pair], np.array([ending.day]))
+                endings[name] = replace(ending, amount=ending.amount * float(rate[0]))
+        lines = {symbol: reinvested(lines[symbol]) for symbol in self.own}
+        return with_endings(lines, endings, self.steps)
 
 
-def _traded(history: PriceHistory, halts: IntArray) -> PriceHistory:
-    """Return the rows of a history outside its halts."""
-    inside = days_in(halts, history.day)
-    return keep_rows(history, ~inside) if inside.any() else history
-
-
-def _last_row(history: PriceHistory | None, today: int) -> int:
-    """Return the last day up to today that has a row, far in the past without any."""
-    if history is None:
-        return -FAR
-    days = np.concatenate((history.day, history.aside))
-    return int(days[days <= today].max(initial=-FAR))
+def _bars_of(lines: Mapping[str, Line], reach: Sequence[int]) -> Bars:
+    columns = [
+        line.columns() | {"reach": day} for line, day in zip(lines.values(), reach, strict=True)
+    ]
+    return concatenate_bars(list(lines), columns)
 
 
 def _settled_sessions(
-    bars: Bars,
-    rows: Mapping[str, PriceHistory],
-    halts: Sequence[IntArray],
-    endings: Mapping[str, Ending],
+    bars: Bars, filed: Mapping[str, Line], histories: Mapping[str, PriceHistory]
 ) -> IntArray:
-    """Return the sessions that are in no query.
-
-    A person has confirmed them, trading resumed on them, or terms set their price.
-    """
-    found: list[int] = []
-    for number, symbol in enumerate(bars.symbols):
-        own = bars.day[bars.offsets[number] : bars.offsets[number + 1]]
-        inside = np.zeros(len(own), dtype=bool)
-        if symbol in rows and len(rows[symbol].confirmed):
-            inside = np.isin(own, rows[symbol].confirmed)
-        for day in days_of_terms(symbol, endings):
-            inside[np.flatnonzero(own >= day)[:2]] = True
-        for resumed in halts[number][:, 1]:
-            inside[np.flatnonzero(own >= resumed)[:1]] = True
-        found += (bars.offsets[number] + np.flatnonzero(inside)).tolist()
-    return np.array(found, dtype=np.int64)
+    """Return the sessions that are in no query: confirmed, or the first after a halt."""
+    found = [np.zeros(0, dtype=np.int64)]
+    for offset, (symbol, line) in zip(bars.offsets, filed.items(), strict=False):
+        inside = np.zeros(len(line.day), dtype=bool)
+        if symbol in histories and len(histories[symbol].confirmed):
+            inside = np.isin(line.day, histories[symbol].confirmed)
+        for resumed in line.halts[:, 1]:
+            inside[np.flatnonzero(line.day >= resumed)[:1]] = True
+        found.append(offset + np.flatnonzero(inside))
+    return np.concatenate(found)
 
 
-def _columns(
-    history: PriceHistory | None,
-    steps: FactorSteps,
-    kind: str,
-    actions: Sequence[Action],
-    today: int,
-) -> dict[str, Any]:
-    if history is None:
-        names = ("day", "high", "low", "close", "has_range", "factor", "total")
-        return dict.fromkeys(names, np.zeros(0)) | {"total_known": False}
-    day, close = history.day, history.close
-    factor = steps.at(day)
-    if kind == "split-adjusted":
-        # already in the units of the last session, whose factor holds throughout
-        factor = np.full(len(day), factor[-1] if len(factor) else 1.0)
-    has_range = np.isfinite(history.high) & np.isfinite(history.low)
-    total, total_known = total_return(history, close * factor, steps.at(day), actions, kind)
-    columns: dict[str, Any] = {
-        "day": day,
-        "high": np.where(has_range, history.high, close) * factor,
-        "low": np.where(has_range, history.low, close) * factor,
-        "close": close * factor,
-        "has_range": has_range,
-        "factor": factor,
-        "total": total,
-    }
-    known = int(np.searchsorted(day, today, side="right"))
-    cut = {name: column[:known] for name, column in columns.items()}
-    return cut | {"total_known": total_known}
+def _with_queries(filed: Mapping[str, Line], found: Doubts) -> dict[str, Line]:
+    """Return the lines with the days of their sessions in query."""
+    result = {}
+    for number, (symbol, line) in enumerate(filed.items()):
+        own = slice(found.bars.offsets[number], found.bars.offsets[number + 1])
+        day = line.day[found.any[own]]
+        queries = np.column_stack((day, np.full_like(day, number), day))
+        result[symbol] = replace(line, queries=queries)
+    return result
 
 
-def total_return(
-    history: PriceHistory,
-    close: FloatArray,
-    factor: FloatArray,
-    actions: Sequence[Action],
-    kind: str,
-) -> tuple[FloatArray, bool]:
-    """Return the total-return level of each session, and whether it is known.
+def _cleaned(filed: Mapping[str, Line], found: Doubts) -> dict[str, Line]:
+    """Return the lines without their prices in query."""
+    result, bars = dict(filed), found.bars
+    for number, (symbol, line) in enumerate(filed.items()):
+        if len(line.queries):
+            own = slice(bars.offsets[number], bars.offsets[number + 1])
+            result[symbol] = without_query(line, bars.high[own], bars.low[own], bars.close[own])
+    return result
 
-    A total column or a total-return series is taken as it is. Otherwise a dividend of ``d``
-    (``factor`` brings it from the units of its day to continuous ones) on its effective
-    session multiplies the level from then on by ``1 + d / close``: it is
-    reinvested at that session's close, so that the level never depends on what came later.
-    Without any dividend on record the level is the close and counts as not known.
-    """
-    if kind == "total-return":
-        return close, True
-    if history.total is not None and np.isfinite(history.total).all() and len(history.total):
-        return history.total, True
-    paid = [one for one in actions if one.kind == "dividend" and one.amount]
-    growth = np.ones(len(close))
-    for one in paid:
-        day = day_number(one.effective)
-        at = int(np.searchsorted(history.day, day))
-        if at < len(close) and close[at] > 0:
-            growth[at] *= 1.0 + float(one.amount or 0.0) * factor[at] / close[at]
-    return close * np.cumprod(growth), bool(paid)
+
+def _doubts_of(found: Doubts, bars: Bars, clean: Bars, lines: Mapping[str, Line]) -> Doubts:
+    """Return the doubts of all sessions: of each file, and of what rests on its prices."""
+    session, origin = [], []
+    for number, line in enumerate(lines.values()):
+        day, of_number, of_day = line.queries[np.isin(line.queries[:, 0], line.day)].T
+        session.append(bars.at_or_before(np.full_like(day, number), day))
+        origin.append(bars.at_or_before(of_number, of_day))
+    masks = (found.close, found.high, found.low)
+    close, high, low = (_moved(mask, found.bars, bars) for mask in masks)
+    at, of = np.concatenate(session), np.concatenate(origin)
+    order = np.argsort(at, kind="stable")
+    prices = replace(bars, high=clean.high, low=clean.low, close=clean.close, total=clean.total)
+    return Doubts(close, high, low, prices, at[order], of[order])
+
+
+def _moved(mask: BoolArray, bars: Bars, others: Bars) -> BoolArray:
+    """Return a mask of the sessions of some bars as one of other bars that hold them all."""
+    moved = np.zeros(len(others.day), dtype=bool)
+    owner = np.searchsorted(bars.offsets, np.flatnonzero(mask), side="right") - 1
+    moved[others.at_or_before(owner, bars.day[mask])] = True
+    return moved
 
 
 def _venue(

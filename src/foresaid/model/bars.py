@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, field, fields
 from functools import cached_property
 from typing import TYPE_CHECKING, Any, TypeAlias
 
@@ -16,6 +16,7 @@ IntArray: TypeAlias = "np.ndarray[Any, np.dtype[np.int64]]"
 BoolArray: TypeAlias = "np.ndarray[Any, np.dtype[np.bool_]]"
 
 _BEYOND = 2**40  # more than any day or cell
+_NO_DAYS = np.zeros(0, dtype=np.int64)
 
 
 @dataclass(frozen=True)
@@ -45,6 +46,10 @@ class Bars:
         Whether ``total`` holds more than the close.
     over : ndarray of bool, shape (n_instruments,)
         Whether the instrument came to a fixed amount, so that its last price holds for good.
+    reach : ndarray of int, shape (n_instruments,)
+        The day up to which it is known what the last close was.
+    total_until, total_since : ndarray of int, shape (n_instruments,)
+        ``total`` is more than the close for what ends by the one day, or on or after the other.
     """
 
     symbols: tuple[str, ...]
@@ -58,6 +63,25 @@ class Bars:
     total: FloatArray
     total_known: BoolArray
     over: BoolArray
+    reach: IntArray = field(default_factory=lambda: _NO_DAYS)
+    total_until: IntArray = field(default_factory=lambda: _NO_DAYS)
+    total_since: IntArray = field(default_factory=lambda: _NO_DAYS)
+
+    def __post_init__(self) -> None:
+        """Fill in what is not stated: where prices reach to, and when totals are known."""
+        if len(self.reach) != len(self.over):
+            object.__setattr__(self, "reach", self.last_day)
+        if len(self.total_since) != len(self.over):
+            until = np.where(self.total_known, _BEYOND, -_BEYOND)
+            object.__setattr__(self, "total_until", until)
+            object.__setattr__(self, "total_since", np.full(len(self.over), _BEYOND))
+
+    def knows_total(self, instrument: IntArray, day: IntArray) -> BoolArray:
+        """Return where total returns that end on a day are known by then, shape (n,)."""
+        known: BoolArray = (day <= self.total_until[instrument]) | (
+            day >= self.total_since[instrument]
+        )
+        return known
 
     @cached_property
     def _table(self) -> tuple[IntArray, IntArray, IntArray, IntArray]:
@@ -196,9 +220,9 @@ class Windows:
     def take(self, rows: Any) -> Windows:  # noqa: ANN401 - any numpy index
         """Return the windows at ``rows`` (a slice, a mask or an index array)."""
         kept: dict[str, Any] = {}
-        for field in fields(self):
-            column = getattr(self, field.name)
-            kept[field.name] = None if column is None else column[rows]
+        for one in fields(self):
+            column = getattr(self, one.name)
+            kept[one.name] = None if column is None else column[rows]
         return Windows(**kept)
 
 
@@ -211,13 +235,18 @@ def concatenate_bars(symbols: Sequence[str], columns: Sequence[dict[str, Any]]) 
         Names, in order.
     columns : sequence of dict, length n
         Arrays ``day, high, low, close, has_range, factor, total`` of each instrument, and the
-        flags ``total_known`` and ``over`` (false where it is missing).
+        flags ``total_known`` and ``over`` (false where it is missing); ``reach``,
+        ``total_until`` and ``total_since`` where they are known for all of them.
     """
     lengths = [len(history["day"]) for history in columns]
 
     def flat(name: str, dtype: type) -> Any:  # noqa: ANN401 - dtype decides
         parts: list[Any] = [np.asarray(history[name], dtype=dtype) for history in columns]
         return np.concatenate(parts) if parts else np.zeros(0, dtype=dtype)
+
+    def stated(name: str) -> IntArray:
+        known = [history[name] for history in columns if name in history]
+        return np.array(known if len(known) == len(columns) else [], dtype=np.int64)
 
     return Bars(
         symbols=tuple(symbols),
@@ -231,4 +260,7 @@ def concatenate_bars(symbols: Sequence[str], columns: Sequence[dict[str, Any]]) 
         total=flat("total", np.float64),
         total_known=np.array([bool(h["total_known"]) for h in columns], dtype=np.bool_),
         over=np.array([bool(h.get("over", False)) for h in columns], dtype=np.bool_),
+        reach=stated("reach"),
+        total_until=stated("total_until"),
+        total_since=stated("total_since"),
     )

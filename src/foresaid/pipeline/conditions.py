@@ -10,7 +10,7 @@ that is not met makes the call void, one that is undecided leaves it open.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from datetime import datetime, time
+from datetime import datetime, time, timedelta
 from typing import TYPE_CHECKING
 from zoneinfo import ZoneInfo
 
@@ -22,6 +22,7 @@ from foresaid.claims.conditions import Condition, parse_condition
 from foresaid.claims.horizons import parse_horizon
 from foresaid.claims.phrases import print_claim
 from foresaid.market.clock import local_times
+from foresaid.market.histories import minutes
 from foresaid.model.days import day_number, day_of
 from foresaid.pipeline.world import CodedCalls, World, coded_calls
 from foresaid.settle.outcomes import settle_calls
@@ -130,16 +131,16 @@ def _settled(
 def _close_of(world: World, number: int, day: int, zone: str) -> _Met:
     """Return the close of a session in the zone of the call's venue.
 
-    Only the day is known where the condition's venue has no zone or no hours.
+    Only the day is known where the condition's venue has no zone or no hours. A close at
+    midnight is a time of the day that it ends.
     """
     venue = world.instruments[number]
-    if not (venue.zone and venue.closes and zone) or venue.closes == "24:00":
+    if not (venue.zone and venue.closes and zone):
         return _Met(day, -1.0)
-    hours, minutes = map(int, venue.closes.split(":"))
-    local = datetime.combine(day_of(day), time(hours, minutes))
+    local = datetime.combine(day_of(day), time()) + timedelta(minutes=minutes(venue.closes) - 1)
     instant = local.replace(tzinfo=ZoneInfo(venue.zone)).isoformat(timespec="seconds")
     there, minute = local_times([instant], [zone])
-    return _Met(int(there[0]), float(minute[0]))
+    return _Met(int(there[0]), float(minute[0]) + 1.0)
 
 
 def _restarted(

@@ -110,7 +110,7 @@ def prices_in_query(ledger: Ledger) -> list[dict[str, Any]]:
 
 
 def queried_sessions(judged: Judgement, row: int) -> list[int]:
-    """Return the positions of sessions with a price in query that one call looks at."""
+    """Return where the prices in query stand that the sessions of one call rest on."""
     market, windows = judged.world.market, judged.outcomes.resolved.windows
     if market.doubts is None or not len(market.bars.day):
         return []
@@ -119,8 +119,8 @@ def queried_sessions(judged: Judgement, row: int) -> list[int]:
     spans = [(begin, end)]
     offsets = market.bars.offsets.tolist()
     spans += [(offsets[leg], offsets[leg + 1]) for leg in _legs(judged, row)]
-    queried = np.flatnonzero(market.doubts.any)
-    return [int(at) for at in queried if any(a <= at < b for a, b in spans)]
+    pairs = zip(market.doubts.session.tolist(), market.doubts.origin.tolist(), strict=True)
+    return sorted({of for at, of in pairs if any(a <= at < b for a, b in spans)})
 
 
 def _legs(judged: Judgement, row: int) -> IntArray:

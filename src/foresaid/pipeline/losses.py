@@ -21,7 +21,7 @@ from foresaid.score.losses import interval_score, pinball_loss, ranked_probabili
 if TYPE_CHECKING:
     from foresaid.chance.base_rate import Starts
     from foresaid.claims.kind import Loss
-    from foresaid.market.histories import Market
+    from foresaid.market.known import Market
     from foresaid.model.bars import FloatArray, IntArray
     from foresaid.model.codebook import Codebook
     from foresaid.settle.outcomes import Outcomes

@@ -3,23 +3,20 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from datetime import date
 from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from foresaid.claims.binding import quantity_arrays
+from foresaid.claims.conditions import parse_condition
 from foresaid.claims.phrases import parse_claim
 from foresaid.ledger import queries
 from foresaid.market.clock import local_times
 from foresaid.market.closures import without_stale
-from foresaid.market.currency import (
-    convert_actions,
-    convert_history,
-    converted_name,
-    find_conversion,
-)
-from foresaid.market.histories import Market, build_market
+from foresaid.market.currency import Converted, converted_name, find_conversion
+from foresaid.market.histories import build_market
 from foresaid.model.price_history import PriceHistory
 from foresaid.pipeline.kinds import check_kinds
 from foresaid.settle.outcomes import CallClaims
@@ -27,12 +24,12 @@ from foresaid.settle.windows import CallTimes
 
 if TYPE_CHECKING:
     from collections.abc import Collection, Sequence
-    from datetime import date
 
     import pandas as pd
 
     from foresaid.claims.claim import Claim
     from foresaid.ledger.store import Ledger
+    from foresaid.market.known import Market
     from foresaid.model.bars import BoolArray, IntArray
     from foresaid.model.codebook import Codebook
     from foresaid.model.records import Action, Instrument
@@ -92,39 +89,43 @@ def load_world(
     actions = queries.actions(ledger, vintage=vintage)
     series = queries.series_kinds(ledger, vintage=vintage)
     known = {one.symbol: one for one in instruments}
-    wanted = _with_successors(set(currencies), actions, known)
-    for symbol, currency in sorted(wanted):
+    prices: dict[str, PriceHistory | Converted] = dict(histories)
+    for symbol, currency in sorted(_with_successors(set(currencies), actions, known)):
         own = known[symbol]
         conversion = find_conversion(known.values(), own=own.currency, wanted=currency)
         if conversion is None or conversion.pair.symbol not in histories:
             continue
-        pair, name = histories[conversion.pair.symbol], converted_name(symbol, currency)
-        paid = [one for one in actions if one.instrument == symbol]
+        name = converted_name(symbol, currency)
+        prices[name] = Converted(symbol, conversion)
         instruments.append(replace(own, symbol=name, currency=currency))
-        if symbol in histories:
-            histories[name] = convert_history(histories[symbol], pair, conversion)
-        actions += [
-            replace(one, into=converted_name(one.into, currency))
-            if (one.into, currency) in wanted
-            else one
-            for one in convert_actions(paid, pair, conversion, name=name)
-        ]
-        series[name] = series.get(symbol, "raw")
-    market = build_market(instruments, histories, actions, series, codebook, as_of=as_of)
+    market = build_market(instruments, prices, actions, series, codebook, as_of=as_of)
     number = {one.symbol: i for i, one in enumerate(instruments)}
-    return World(market, tuple(instruments), number, tuple(actions), n_own)
+    told = [
+        replace(action, instrument=name)
+        for name, one in prices.items()
+        for action in actions
+        if isinstance(one, Converted) and action.instrument == one.symbol
+    ]
+    return World(market, tuple(instruments), number, (*actions, *told), n_own)
 
 
 def _with_successors(
     wanted: set[tuple[str, str]], actions: list[Action], known: dict[str, Instrument]
 ) -> set[tuple[str, str]]:
-    """Return the wanted prices with those of whatever these instruments became."""
+    """Return the wanted prices with those of whatever instruments became.
+
+    An instrument's own prices go on in its own currency, whatever its successor is quoted in.
+    """
     became = {one.instrument: one.into for one in actions if one.kind == "merger"}
-    for symbol, currency in list(wanted):
+    own = {(symbol, known[symbol].currency) for symbol in became}
+    for symbol, currency in wanted | own:
         following = became.get(symbol, "")
         while following in known and (following, currency) not in wanted:
-            if known[following].currency != currency:
+            theirs = known[following].currency
+            if currency and theirs and theirs != currency:
                 wanted.add((following, currency))
+            elif theirs != currency:
+                break
             following = became.get(following, "")
     return wanted
 
@@ -172,14 +173,24 @@ def confirmed_days(
 
 
 def wanted_currencies(ledger: Ledger, frame: pd.DataFrame) -> set[tuple[str, str]]:
-    """Return the instruments that calls speak of in a currency other than their own."""
+    """Return the instruments that calls speak of in a currency other than their own.
+
+    Conditions on instruments are calls as well: in the currency of their own instrument.
+    """
     own = {symbol: one.currency for symbol, (_, one) in queries.instruments(ledger).items()}
+    stated = set(zip(frame["instrument"], frame["currency"], frame["claim"], strict=True))
+    spoken = {(symbol, currency, parse_claim(phrase)) for symbol, currency, phrase in stated}
+    for text in set(frame["given"]) - {""}:
+        condition = parse_condition(text, said=date.min)
+        if condition.claim is not None:
+            spoken.add((condition.instrument, "", condition.claim))
     wanted: set[tuple[str, str]] = set()
-    stated = zip(frame["instrument"], frame["currency"], frame["claim"], strict=True)
-    for symbol, currency, phrase in set(stated):
-        spoken = currency or own[symbol]
-        legs = {symbol, *parse_claim(phrase).others}
-        wanted |= {(leg, spoken) for leg in legs if spoken and own[leg] not in ("", spoken)}
+    for symbol, stated_in, claim in spoken:
+        currency = stated_in or own[symbol]
+        legs = {symbol, *claim.others}
+        wanted |= {
+            (leg, currency) for leg in legs if currency and own[leg] not in ("", currency)
+        }
     return wanted
 
 

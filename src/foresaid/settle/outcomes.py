@@ -8,23 +8,18 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from foresaid.claims.binding import bind
+from foresaid.claims.kernels import Unfit
 from foresaid.claims.paths import LOOK_BACK
 from foresaid.claims.registry import KINDS
 from foresaid.claims.relative import NO_RETURN
-from foresaid.settle.missing import MISSING, lacks_session
-from foresaid.settle.windows import (
-    REASONS,
-    VOID_REASONS,
-    publication_days,
-    resolve_windows,
-)
+from foresaid.settle.windows import REASONS, VOID_REASONS, resolve_windows
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
     from foresaid.claims.kernels import Judged, Kernel
     from foresaid.claims.kind import Kind
-    from foresaid.market.histories import Market
+    from foresaid.market.known import Market
     from foresaid.model.bars import Bars, BoolArray, FloatArray, IntArray, Windows
     from foresaid.model.codebook import SettlementRules
     from foresaid.settle.windows import CallTimes, Resolved
@@ -158,8 +153,6 @@ def settle_calls(
     """
     resolved = resolve_windows(times, market, rules)
     work = _Work(claims, market, resolved, rules, level_factors(times, market))
-    reference_day, _ = publication_days(times, market, rules)
-    work.leave(lacks_session(times, resolved, reference_day, market), "open", MISSING)
     work.leave(claims.blocked != "", "open", claims.blocked)
     if claims.is_void is not None:
         work.leave(claims.is_void, "void", claims.blocked)
@@ -209,6 +202,20 @@ def level_factors(times: CallTimes, market: Market) -> FloatArray:
     return market.level_factor(times.instrument, stated)
 
 
+@dataclass(frozen=True)
+class _Answer:
+    """What calls come to on some prices.
+
+    ``code`` is 1 hit, 0 miss, -1 where more sessions have to come, and below that where the
+    call cannot be judged, for one of ``reasons``. ``judged`` is about those that are fit.
+    """
+
+    code: IntArray
+    reasons: dict[int, tuple[str, str]]
+    is_fit: BoolArray
+    judged: Judged
+
+
 class _Work:
     """The arrays of ``Outcomes`` while they are being filled."""
 
@@ -249,20 +256,45 @@ class _Work:
         here = np.where(windows.additive, 0.0, 1.0)
         if kind.direction == "by level":
             self.direction[rows] = np.where(marks[:, 0] > here, "up", "down")
-        sound = self._sound(kind, rows, windows, marks)
-        rows, windows, marks = rows[sound], windows.take(sound), marks[sound]
-        bars, tolerance = self.market.bars, self.rules.tolerance
-        judged = kind.kernel.judge(bars, windows, marks, tolerance)
-        matured = self.resolved.matured[rows]
-        final = matured | judged.final
-        doubtful = final & self._is_doubtful(kind, rows, windows, judged)
+        answer = self._answer(kind.kernel, rows, windows, marks, self.market.bars)
+        doubtful = self._is_doubtful(kind, rows, windows, answer)
         self.leave_rows(rows[doubtful], PRICE_QUERY, "open")
-        final &= ~doubtful
-        self._keep(rows[final], judged, final)
-        self._keep_alternates(kind, rows[matured], windows.take(matured), marks[matured])
+        for code, (reason, result) in answer.reasons.items():
+            self.leave_rows(rows[(answer.code == code) & ~doubtful], reason, result)
+        sure = (answer.code >= MISS) & ~doubtful
+        self._keep(rows[sure], answer.judged, sure[answer.is_fit])
+        kept = answer.is_fit & ~doubtful & self.resolved.matured[rows]
+        self._keep_alternates(kind, rows[kept], windows.take(kept), marks[kept])
+
+    def _answer(
+        self, kernel: Kernel, rows: IntArray, windows: Windows, marks: FloatArray, bars: Bars
+    ) -> _Answer:
+        """Return what calls come to on some prices: a result, or why they have none."""
+        code, reasons = self._unfit(kernel, rows, windows, marks, bars)
+        fit = code == NONE
+        judged = kernel.judge(bars, windows.take(fit), marks[fit], self.rules.tolerance)
+        final = self.resolved.matured[rows[fit]] | judged.final
+        code[fit] = np.where(final, judged.hit.astype(np.int64), NONE)
+        return _Answer(code, reasons, fit, judged)
+
+    def _unfit(
+        self, kernel: Kernel, rows: IntArray, windows: Windows, marks: FloatArray, bars: Bars
+    ) -> tuple[IntArray, dict[int, tuple[str, str]]]:
+        """Return a code for each call that cannot be judged, and what the codes mean."""
+        sunk = ~windows.additive & (bars.close[windows.reference] <= 0)
+        unfit = [Unfit(sunk, "the reference price is not above zero")]
+        unfit += kernel.unsound(bars, windows, marks, self.rules.tolerance)
+        code = np.full(len(rows), NONE, dtype=np.int64)
+        reasons = {}
+        for number, (found, reason, result) in enumerate(unfit):
+            # what later sessions may mend is no fault yet
+            due = True if result == "void" else self.resolved.matured[rows]
+            code[found & due & (code == NONE)] = NONE - 1 - number
+            reasons[NONE - 1 - number] = reason, result.split()[0]
+        return code, reasons
 
     def _is_doubtful(
-        self, kind: Kind, rows: IntArray, windows: Windows, judged: Judged
+        self, kind: Kind, rows: IntArray, windows: Windows, answer: _Answer
     ) -> BoolArray:
         """Return where prices in query decide: without them the answer is another."""
         result = np.zeros(len(rows), dtype=bool)
@@ -271,11 +303,10 @@ class _Work:
             return result
         some = np.flatnonzero(self._meets_query(windows))
         if len(some):
-            own, matured = windows.take(some), self.resolved.matured[rows[some]]
+            own = windows.take(some)
             marks = self._bind(kind, rows[some], own, doubts.bars)
-            other = kind.kernel.judge(doubts.bars, own, marks, self.rules.tolerance)
-            stays_open = ~(matured | other.final)
-            result[some] = stays_open | (other.hit != judged.hit[some])
+            other = self._answer(kind.kernel, rows[some], own, marks, doubts.bars)
+            result[some] = other.code != answer.code[some]
         return result
 
     def _meets_query(self, windows: Windows) -> BoolArray:
@@ -303,24 +334,6 @@ class _Work:
             additive=windows.additive,
         )
 
-    def _hits(self, kernel: Kernel, windows: Windows, marks: FloatArray) -> BoolArray:
-        return kernel.hits(self.market.bars, windows, marks, self.rules.tolerance)
-
-    def _sound(
-        self, kind: Kind, rows: IntArray, windows: Windows, marks: FloatArray
-    ) -> BoolArray:
-        """Void what has no meaning at its reference, and return what remains."""
-        reference = self.market.bars.close[windows.reference]
-        sunk = ~windows.additive & (reference <= 0)
-        self.leave_rows(rows[sunk], "the reference price is not above zero")
-        unfit = kind.kernel.unsound(self.market.bars, windows, marks, self.rules.tolerance)
-        for found, reason, result in unfit:
-            # prices that a window still waits for are not missing yet
-            mask = found & self.resolved.matured[rows] if result == "open" else found
-            self.leave_rows(rows[mask & ~sunk], reason, result)
-            sunk |= mask
-        return ~sunk
-
     def leave_rows(self, rows: IntArray, reason: str, result: str = "void") -> None:
         """Keep calls from being judged, by row number."""
         chosen = np.zeros(len(self.result), dtype=bool)
@@ -328,28 +341,28 @@ class _Work:
         if len(rows):
             self.leave(chosen, result, reason)
 
-    def _keep(self, rows: IntArray, judged: Judged, final: BoolArray) -> None:
-        self.result[rows] = np.where(judged.hit[final], "hit", "miss")
+    def _keep(self, rows: IntArray, judged: Judged, kept: BoolArray) -> None:
+        self.result[rows] = np.where(judged.hit[kept], "hit", "miss")
         self.reason[rows] = ""
-        self.decided[rows] = judged.decided[final]
-        self.value[rows] = judged.value[final]
-        self.measured[rows] = judged.measured[final]
-        self.tie[rows] = judged.tie[final]
+        self.decided[rows] = judged.decided[kept]
+        self.value[rows] = judged.value[kept]
+        self.measured[rows] = judged.measured[kept]
+        self.tie[rows] = judged.tie[kept]
 
     def _keep_alternates(
         self, kind: Kind, rows: IntArray, windows: Windows, marks: FloatArray
     ) -> None:
+        """Judge other readings, of which those without a meaning stay empty."""
+        bars, tolerance = self.market.bars, self.rules.tolerance
         for name, kernel in kind.alternates.items():
-            self.alternates[name][rows] = self._hits(kernel, windows, marks)
+            self.alternates[name][rows] = kernel.hits(bars, windows, marks, tolerance)
         has_before = np.flatnonzero(windows.reference > windows.floor)
         before = windows.take(has_before)
         before = replace(before, reference=before.reference - 1)
-        marks_before = self._bind(kind, rows[has_before], before)
-        hit = self._hits(kind.kernel, before, marks_before).astype(np.int64)
-        bars, tolerance = self.market.bars, self.rules.tolerance
-        for unfit in kind.kernel.unsound(bars, before, marks_before, tolerance):
-            hit[unfit.rows] = NONE
-        self.alternates[CLOSE_BEFORE][rows[has_before]] = hit
+        marks = self._bind(kind, rows[has_before], before)
+        code, _ = self._unfit(kind.kernel, rows[has_before], before, marks, bars)
+        hit = kind.kernel.hits(bars, before, marks, tolerance).astype(np.int64)
+        self.alternates[CLOSE_BEFORE][rows[has_before]] = np.where(code == NONE, hit, NONE)
 
     def outcomes(self) -> Outcomes:
         """Return the filled arrays."""

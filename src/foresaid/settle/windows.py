@@ -15,7 +15,7 @@ import numpy as np
 from foresaid.model.bars import Windows
 
 if TYPE_CHECKING:
-    from foresaid.market.histories import Market
+    from foresaid.market.known import Market
     from foresaid.model.bars import BoolArray, Calendar, FloatArray, IntArray
     from foresaid.model.codebook import SettlementRules
 
@@ -53,20 +53,46 @@ class CallTimes:
 
 
 @dataclass(frozen=True)
+class Deadlines:
+    """What is known of deadlines; arrays (n,).
+
+    Attributes
+    ----------
+    last : ndarray of int
+        Position of the last session by the deadline.
+    reached : ndarray of bool
+        Whether no later price can bring another one.
+    rolled : ndarray of bool
+        Whether the day is no session of an instrument that still traded.
+    halted : ndarray of bool
+        Whether trading was halted on it.
+    fixed : ndarray of bool
+        Whether the instrument had come to an amount for good by then.
+    """
+
+    last: IntArray
+    reached: BoolArray
+    rolled: BoolArray
+    halted: BoolArray
+    fixed: BoolArray
+
+
+@dataclass(frozen=True)
 class Resolved:
     """Windows with what is known of them; arrays (n,).
 
     Attributes
     ----------
     windows : Windows
-        Positions; for a window that still runs, ``last`` is the last session known. Positions
-        mean nothing where neither ``matured`` nor ``running``.
+        Positions; for a window whose deadline session is not known, ``last`` is the last
+        session there is by the deadline. Positions mean nothing where neither ``matured`` nor
+        ``running``.
     matured : ndarray of bool
         Whether the deadline session is known and the window is sound.
     running : ndarray of bool
-        Whether the window has begun and its deadline is not known yet.
+        Whether the window has begun and its deadline session is not known.
     reason : ndarray of int
-        Index into ``REASONS`` where the call is neither matured nor fit to be judged.
+        Index into ``REASONS`` where the call has not matured.
     rolled_back : ndarray of bool
         Whether the deadline was no session.
     """
@@ -78,7 +104,7 @@ class Resolved:
     rolled_back: BoolArray
 
 
-FINE, NO_REFERENCE, RUNS, NO_DEADLINE_PRICE, EMPTY, SAME_CLOSE, HALTED = range(7)
+FINE, NO_REFERENCE, RUNS, NO_DEADLINE_PRICE, EMPTY, SAME_CLOSE, HALTED, LACKS = range(8)
 REASONS = (
     "",
     "no price yet on or after the statement",
@@ -87,6 +113,7 @@ REASONS = (
     "the deadline is before the reference session",
     "the deadline close is the reference close",
     "trading was halted through the whole window",
+    "a price is missing: its market traded on a day that the call needs",
 )
 VOID_REASONS = (EMPTY, SAME_CLOSE, HALTED)
 
@@ -124,11 +151,18 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
     if market.longest_gap > rules.roll_back_days:
         far = _rolled_too_far(due, sound, times, market, rules)
         sound[far], reason[far] = False, NO_DEADLINE_PRICE
-    odd = np.flatnonzero(~sound & (reason == FINE))
+    has_reference = begun
+    if market.lacks_sessions:
+        begins, ends = _missing_sessions(times, due, reference_day, begun, reference, market)
+        sound[begins | ends], reason[begins | ends] = False, LACKS
+        has_reference = begun & ~begins
+    odd = np.flatnonzero(~sound)
     if len(odd):
-        reason[odd] = _reasons(odd, due, begun, reference, times, market)
-        end = bars.last_position[number[odd]]
-        running[odd] = begun[odd] & ~due.reached[odd] & (first[odd] <= end)
+        blank = odd[reason[odd] == FINE]
+        reason[blank] = _reasons(blank, due, begun, reference, times, market)
+        end = np.minimum(bars.last_position[number[odd]], due.last[odd])
+        is_void = np.isin(reason[odd], VOID_REASONS)
+        running[odd] = has_reference[odd] & ~is_void & (first[odd] <= end)
         # positions that mean nothing still have to be positions
         top = max(len(bars.day) - 1, 0)
         reference[odd] = np.minimum(reference[odd], np.clip(end, floor[odd], None)).clip(
@@ -136,50 +170,79 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
         )
         first[odd] = np.minimum(first[odd], due.last[odd])
     additive = market.venue.additive.take(number)
-    until = _day_of_others(due.last, times, market)
+    until = _day_of_others(due, times, market)
     windows = Windows(floor, reference, first, due.last, additive, times.legs, until)
-    return Resolved(
-        windows, sound, running, reason, _rolled_back(due.rolled & sound, times, market)
-    )
-
-
-@dataclass(frozen=True)
-class _Deadlines:
-    """Deadline sessions, whether they are known, and whether the day was no session; (n,)."""
-
-    last: IntArray
-    reached: BoolArray
-    rolled: BoolArray
-    halted: BoolArray
+    return Resolved(windows, sound, running, reason, due.rolled & sound)
 
 
 def _deadlines(
     times: CallTimes, market: Market, calendar: Calendar, reference: IntArray
-) -> _Deadlines:
-    number = times.instrument
+) -> Deadlines:
+    bars, number = market.bars, times.instrument
     last, is_due_session, is_due_beyond = calendar.look_up(times.deadline_day)
     reached = ~is_due_beyond
     rolled = is_due_session == 0
     dated = times.sessions == 0
+    fixed = np.zeros(len(number), dtype=bool)
     if is_due_beyond.any():
-        _weekends_may_pass(reached, times, market)
-        reached |= times.deadline_day <= market.known_day.take(number)
-        reached |= _is_certain(times, market)
-    halted = np.zeros(len(number), dtype=bool)
-    if len(market.halted):
-        halted = market.is_halted(number, times.deadline_day) & dated
-        reached |= halted
+        reached |= times.deadline_day <= bars.reach.take(number)
     if not dated.all():
-        end = market.bars.last_position[number]
+        end = bars.last_position[number]
         last = np.where(dated, last, reference + times.sessions)
-        reached = np.where(dated, reached, (last <= end) | _is_certain(times, market))
+        reached = np.where(dated, reached, (last <= end) | market.is_over.take(number))
         last = np.minimum(last, end)
         rolled &= dated
-    return _Deadlines(last, reached, rolled, halted)
+    if market.is_over.any():
+        fixed = market.is_over.take(number) & (last == bars.last_position[number])
+        rolled &= ~fixed
+        reached &= ~_waits_for_others(fixed & dated, times, market)
+    halted = np.zeros(len(number), dtype=bool)
+    if len(market.halted):
+        halted = market.is_halted(number, times.deadline_day) & dated & ~fixed
+    return Deadlines(last, reached, rolled, halted, fixed)
+
+
+def _missing_sessions(
+    times: CallTimes,
+    due: Deadlines,
+    reference_day: IntArray,
+    begun: BoolArray,
+    reference: IntArray,
+    market: Market,
+) -> tuple[BoolArray, BoolArray]:
+    """Return where the reference or the deadline session is missing from the file.
+
+    Instruments with the same market code share their trading days. Where another one of them
+    traded between the day a call needs and the session its own file has for it, the next or
+    the last session there is would be a wrong answer. Without its reference a call cannot be
+    judged at all; without its deadline session what was final before stays so.
+    """
+    day, number = market.bars.day, times.instrument
+    top = max(len(day) - 1, 0)
+    dated = times.sessions == 0
+    far = np.where(dated & due.reached, times.deadline_day, reference_day - 1)
+    before = np.where(begun, day[np.minimum(reference, top)] - 1, far)
+    before = np.where(dated, np.minimum(before, times.deadline_day), before)
+    at_reference = market.lacks_session(number, reference_day, before)
+    # a last session before the first of the instrument means that there is none
+    has_last = due.last >= market.bars.offsets[number]
+    after = np.where(has_last, day[np.clip(due.last, 0, top)] + 1, reference_day)
+    after = np.maximum(after, reference_day)
+    at_deadline = market.lacks_session(number, after, times.deadline_day)
+    return at_reference, at_deadline & dated & due.reached
+
+
+def _waits_for_others(fixed: BoolArray, times: CallTimes, market: Market) -> BoolArray:
+    """Return where a comparison on an amount for good waits for the others' deadline price."""
+    if times.legs is None:
+        return np.zeros(len(fixed), dtype=bool)
+    over = np.append(market.is_over, True)  # a leg that is not there
+    result: BoolArray = fixed & (times.deadline_day > market.as_of_day)
+    return result & ~over[times.legs].all(axis=1)
 
 
 def _rolled_too_far(
-    due: _Deadlines,
+    due: Deadlines,
     sound: BoolArray,
     times: CallTimes,
     market: Market,
@@ -187,48 +250,23 @@ def _rolled_too_far(
 ) -> IntArray:
     """Return the calls whose deadline session lies too long before the deadline."""
     far = np.flatnonzero(due.rolled & sound & ~due.halted)
-    far = far[times.deadline_day[far] - market.bars.day[due.last[far]] > rules.roll_back_days]
-    result: IntArray = far[~market.is_over[times.instrument[far]]]
+    days = times.deadline_day[far] - market.bars.day[due.last[far]]
+    result: IntArray = far[days > rules.roll_back_days]
     return result
 
 
-def _is_certain(times: CallTimes, market: Market) -> BoolArray:
-    """Return where no later price can matter, because every leg came to a fixed amount.
-
-    A comparison whose own instrument alone did so waits for the others until its deadline.
-    """
-    certain = market.is_over.take(times.instrument)
-    if times.legs is None or not certain.any():
-        return certain
-    over = np.append(market.is_over, True)  # a leg that is not there
-    due = (times.deadline_day <= market.as_of_day) & (times.sessions == 0)
-    result: BoolArray = certain & (over[times.legs].all(axis=1) | due)
-    return result
-
-
-def _day_of_others(last: IntArray, times: CallTimes, market: Market) -> IntArray | None:
+def _day_of_others(due: Deadlines, times: CallTimes, market: Market) -> IntArray | None:
     """Return the day on which other instruments are read, None where it is that of ``last``."""
     if times.legs is None or not len(market.bars.day):
         return None
-    day = market.bars.day[np.clip(last, 0, len(market.bars.day) - 1)]
-    ended = market.ended_day.take(times.instrument)
-    is_fixed = market.is_over.take(times.instrument) & (times.sessions == 0)
-    until: IntArray = np.where(
-        is_fixed & (ended <= times.deadline_day), times.deadline_day, day
-    )
+    day = market.bars.day[np.clip(due.last, 0, len(market.bars.day) - 1)]
+    until: IntArray = np.where(due.fixed & (times.sessions == 0), times.deadline_day, day)
     return until
-
-
-def _rolled_back(rolled: BoolArray, times: CallTimes, market: Market) -> BoolArray:
-    """Return where a deadline was no session of an instrument that still traded."""
-    if market.has_endings:
-        rolled &= times.deadline_day < market.ended_day.take(times.instrument)
-    return rolled
 
 
 def _reasons(
     odd: IntArray,
-    due: _Deadlines,
+    due: Deadlines,
     begun: BoolArray,
     reference: IntArray,
     times: CallTimes,
@@ -274,19 +312,3 @@ def publication_days(
     # the day of the first session that opens later, counted from the day of the statement
     first_day = np.where(timed, 1 - before_open + overnight, 1)
     return times.said_day + after_close, first_day > after_close
-
-
-def _weekends_may_pass(reached: BoolArray, times: CallTimes, market: Market) -> None:
-    """Mark deadlines as reached that only a weekend parts from the last price.
-
-    Once such a deadline has passed, no later price can bring another session before it where
-    the instrument does not trade at weekends.
-    """
-    waiting = np.flatnonzero(~reached & (times.deadline_day <= market.as_of_day))
-    number = times.instrument[waiting]
-    has_prices = market.bars.last_position >= market.bars.offsets[:-1]
-    closed = waiting[~market.venue.weekends[number] & has_prices[number]]
-    last_day = market.bars.last_day[times.instrument[closed]]
-    after = np.asarray(last_day + 1, dtype="datetime64[D]")
-    until = np.asarray(times.deadline_day[closed] + 1, dtype="datetime64[D]")
-    reached[closed[np.busday_count(after, until) == 0]] = True

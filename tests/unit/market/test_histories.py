@@ -184,6 +184,12 @@ def test_total_return_is_the_same_from_raw_and_from_adjusted_prices():
     assert adjusted.bars.total.tolist() == pytest.approx(raw.bars.total.tolist())
 
 
+def test_a_dividend_is_not_known_before_its_day():
+    bars = market(history([10, 11, 12], [80.0] * 3), actions=[dividend(12, 1.0)]).bars
+    none = np.zeros(3, dtype=np.int64)
+    assert bars.knows_total(none, np.array([10, 11, 12])).tolist() == [False, False, True]
+
+
 def test_without_dividends_the_total_is_not_known():
     bars = market(history([10, 11], [80.0, 84.0])).bars
     assert bars.total.tolist() == [80.0, 84.0]

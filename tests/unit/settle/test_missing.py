@@ -9,11 +9,11 @@ from foresaid.market.histories import build_market
 from foresaid.model.codebook import default_codebook
 from foresaid.model.price_history import PriceHistory
 from foresaid.model.records import Instrument
-from foresaid.settle.missing import MISSING
 from foresaid.settle.outcomes import CallClaims, settle_calls
-from foresaid.settle.windows import CallTimes
+from foresaid.settle.windows import LACKS, REASONS, CallTimes
 
 BOOK = default_codebook()
+MISSING = REASONS[LACKS]
 FIRST = int(np.datetime64("2024-03-04").astype(np.int64))  # a Monday
 
 
