@@ -993,7 +993,7 @@ class Job:
             return
         every = all(leg.fixed for leg in legs)
         if not every and window.deadline > self.settler.world.as_of:
-            window.result = "open"
+            window.last, window.result = None, ""
             window.reason = NO_REFERENCE if window.reference is None else RUNS
 
     def placed(self, line: Line, window: Window) -> Answer:
