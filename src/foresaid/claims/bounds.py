@@ -42,7 +42,7 @@ class BoundKernel(Kernel):
         self, bars: Bars, windows: Windows, marks: FloatArray, tolerance: float
     ) -> BoolArray:
         """Return only whether each claim came true; see ``Kernel.hits``."""
-        reference = bars.close.take(windows.reference)
+        reference = bars.close.take(windows.reference, mode="clip")
         result: BoolArray | None = None
         for bound in self.bounds:
             limits = limits_of(bound, reference, windows, marks, tolerance)
@@ -199,7 +199,7 @@ def moves_from(start: FloatArray, value: FloatArray, additive: BoolArray) -> Flo
 def _measure(bound: Bound, side: int, prices: FloatArray, windows: Windows) -> FloatArray:
     """Return the price that decides a bound: the last, the best or the worst of the window."""
     if bound.over is Over.END:
-        return prices.take(windows.last)
+        return prices.take(windows.last, mode="clip")
     return extreme_of(
         prices, windows.first, windows.last, largest=(side > 0) == (bound.over is Over.ANY)
     )

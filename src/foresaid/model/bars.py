@@ -141,9 +141,9 @@ class Bars:
     def calendar(self, instrument: IntArray) -> Calendar:
         """Return the calendars of these instruments, shape (n,), to look days up in."""
         table, shift, first, last = self._table
-        return Calendar(
-            table, shift.take(instrument), first.take(instrument), last.take(instrument)
-        )
+        # numbers are in range; to say so spares numpy the check
+        own = (one.take(instrument, mode="clip") for one in (shift, first, last))
+        return Calendar(table, *own)
 
     def at_or_before(self, instrument: IntArray, day: IntArray) -> IntArray:
         """Return the position of the last session on or before each day."""
@@ -179,10 +179,10 @@ class Calendar:
         cell = day + self.shift
         np.minimum(cell, self.last, out=cell)
         np.maximum(cell, self.first, out=cell)
-        found = self.table.take(cell).astype(np.int64)
-        flags = found & 3
+        found = self.table.take(cell, mode="clip")
+        is_session, is_beyond = found & 1, (found & 2).astype(bool)
         found >>= 2
-        return found, flags & 1, flags > 1
+        return found.astype(np.int64), is_session.astype(np.int64), is_beyond
 
 
 @dataclass(frozen=True)

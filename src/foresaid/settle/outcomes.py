@@ -12,7 +12,14 @@ from foresaid.claims.kernels import Unfit
 from foresaid.claims.paths import LOOK_BACK
 from foresaid.claims.registry import KINDS
 from foresaid.claims.relative import NO_RETURN
-from foresaid.settle.windows import REASONS, VOID_REASONS, resolve_windows
+from foresaid.settle.blocks import blank_like, put_rows, take_rows
+from foresaid.settle.windows import (
+    REASONS,
+    VOID_REASONS,
+    legs_lack_returns,
+    resolve_windows,
+    uncountable,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -25,6 +32,7 @@ if TYPE_CHECKING:
     from foresaid.settle.windows import CallTimes, Resolved
 
 CHUNK = 16_384  # windows judged at once: small enough to stay in the processor's cache
+BLOCK = 32_768  # calls settled at once: all that is needed besides the answers is about these
 NONE, MISS, HIT = -1, 0, 1
 CLOSE_BEFORE = "close_before"
 UNCOUNTABLE = "sessions cannot be counted on an instrument that has ended"
@@ -118,10 +126,13 @@ def group_calls(
     kinds: np.ndarray[Any, np.dtype[np.object_]], inverse: BoolArray, order: IntArray
 ) -> Iterator[Group]:
     """Yield the calls of each kind, the inverse sense apart, in the given order."""
-    names, codes = np.unique(kinds[order].astype(str), return_inverse=True)
-    for code, name in enumerate(names):
+    # strings are looked up, not sorted: there are few of them
+    codes_of = {name: code for code, name in enumerate(sorted(set(kinds.tolist())))}
+    codes = np.fromiter(map(codes_of.__getitem__, kinds), dtype=np.int16, count=len(kinds))
+    codes = 2 * codes[order] + inverse[order]
+    for name, code in codes_of.items():
         for sense in (False, True):
-            rows = order[(codes == code) & (inverse[order] == sense)]
+            rows = order[codes == 2 * code + sense]
             if len(rows):
                 yield Group(KINDS[str(name)].in_sense(inverse=sense), rows)
 
@@ -151,6 +162,28 @@ def settle_calls(
     Outcomes
         Nothing in it depends on prices after a call's deadline session.
     """
+    n, whole = len(times.instrument), None
+    for begin in range(0, max(n, 1), BLOCK):
+        rows = slice(begin, min(begin + BLOCK, n))
+        own, said = take_rows(times, rows), take_rows(claims, rows)
+        part = _settle_block(own, said, market, inverse[rows], rules)
+        if n <= BLOCK:
+            return part
+        whole = blank_like(part, n) if whole is None else whole
+        put_rows(whole, part, rows)
+        del part  # or two blocks would be held at once
+    assert whole is not None
+    return whole
+
+
+def _settle_block(
+    times: CallTimes,
+    claims: CallClaims,
+    market: Market,
+    inverse: BoolArray,
+    rules: SettlementRules,
+) -> Outcomes:
+    """Return what became of the calls of one block."""
     resolved = resolve_windows(times, market, rules)
     work = _Work(claims, market, resolved, rules, level_factors(times, market))
     work.leave(claims.blocked != "", "open", claims.blocked)
@@ -162,9 +195,9 @@ def settle_calls(
         if group.kind.direction != "by level":
             work.direction[group.rows] = group.kind.direction
         if group.kind.kernel.needs_legs:
-            endless = _uncountable(times, resolved, market, group.rows)
+            endless = uncountable(times, resolved, market, group.rows)
             work.leave(endless, "void", UNCOUNTABLE)
-            work.leave(_legs_lack_returns(times, market, group.rows), "void", NO_RETURN)
+            work.leave(legs_lack_returns(times, market, group.rows), "void", NO_RETURN)
         if any(mark.role == "level" for mark in group.kind.marks):
             barred = np.zeros(len(order), dtype=bool)
             barred[group.rows] = total_return[group.rows]
@@ -173,27 +206,6 @@ def settle_calls(
         for start in range(0, len(live), CHUNK):
             work.settle(group.kind, live[start : start + CHUNK])
     return work.outcomes()
-
-
-def _legs_lack_returns(times: CallTimes, market: Market, rows: IntArray) -> BoolArray:
-    """Return where a compared instrument is quoted by difference and so has no return."""
-    result = np.zeros(len(times.instrument), dtype=bool)
-    if times.legs is not None:
-        additive = np.append(market.venue.additive, False)
-        result[rows] = additive[times.legs[rows]].any(axis=1)
-    return result
-
-
-def _uncountable(
-    times: CallTimes, resolved: Resolved, market: Market, rows: IntArray
-) -> BoolArray:
-    """Return where a comparison counts sessions beyond the end of its own instrument."""
-    result = np.zeros(len(times.instrument), dtype=bool)
-    number = times.instrument[rows]
-    wanted = resolved.windows.reference[rows] + times.sessions[rows]
-    beyond = wanted > market.bars.last_position[number]
-    result[rows] = (times.sessions[rows] > 0) & market.is_over[number] & beyond
-    return result
 
 
 def level_factors(times: CallTimes, market: Market) -> FloatArray:

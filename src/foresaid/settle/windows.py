@@ -138,12 +138,12 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
     bars, number = market.bars, times.instrument
     reference_day, path_waits = publication_days(times, market, rules)
     # the first session on or after the day, and the first after it
-    calendar, floor = bars.calendar(number), bars.offsets.take(number)
-    by_then, is_session, is_beyond = calendar.look_up(reference_day)
-    reference = by_then + 1 - is_session
-    first = (
-        reference + is_session if path_waits is True else reference + is_session * path_waits
-    )
+    calendar, floor = bars.calendar(number), bars.offsets.take(number, mode="clip")
+    first, is_session, is_beyond = calendar.look_up(reference_day)
+    first += 1
+    reference = first - is_session
+    if path_waits is not True:
+        first -= is_session * ~path_waits
     begun = ~is_beyond
     due = _deadlines(times, market, calendar, reference)
     sound = (due.last > reference) & due.reached & begun
@@ -169,7 +169,7 @@ def resolve_windows(times: CallTimes, market: Market, rules: SettlementRules) ->
             max=top
         )
         first[odd] = np.minimum(first[odd], due.last[odd])
-    additive = market.venue.additive.take(number)
+    additive = market.venue.additive.take(number, mode="clip")
     until = _day_of_others(due, times, market)
     windows = Windows(floor, reference, first, due.last, additive, times.legs, until)
     return Resolved(windows, sound, running, reason, due.rolled & sound)
@@ -312,3 +312,24 @@ def publication_days(
     # the day of the first session that opens later, counted from the day of the statement
     first_day = np.where(timed, 1 - before_open + overnight, 1)
     return times.said_day + after_close, first_day > after_close
+
+
+def legs_lack_returns(times: CallTimes, market: Market, rows: IntArray) -> BoolArray:
+    """Return where a compared instrument is quoted by difference and so has no return."""
+    result = np.zeros(len(times.instrument), dtype=bool)
+    if times.legs is not None:
+        additive = np.append(market.venue.additive, False)
+        result[rows] = additive[times.legs[rows]].any(axis=1)
+    return result
+
+
+def uncountable(
+    times: CallTimes, resolved: Resolved, market: Market, rows: IntArray
+) -> BoolArray:
+    """Return where a comparison counts sessions beyond the end of its own instrument."""
+    result = np.zeros(len(times.instrument), dtype=bool)
+    number = times.instrument[rows]
+    wanted = resolved.windows.reference[rows] + times.sessions[rows]
+    beyond = wanted > market.bars.last_position[number]
+    result[rows] = (times.sessions[rows] > 0) & market.is_over[number] & beyond
+    return result
