@@ -120,3 +120,30 @@ def test_a_confirmation_that_cannot_be_kept(desk, args, told):
 
 def test_nothing_is_settled_yet(desk):
     assert "Nothing is settled yet" in desk.run("confirm", status=2).stderr
+
+
+THINGS = """instrument,kind,currency,base,term
+METAL,share,SEL,,
+GONE,share,KOR,,
+PAIR,pair,KOR,SEL,KOR
+"""
+
+
+def test_what_rests_on_a_price_in_query_names_where_it_stands(tmp_path):
+    """A rate in query is confirmed for the pair, whatever is converted by it."""
+    desk = Desk(tmp_path).stock(prices=False)
+    desk.bring("instruments", THINGS, name="things.csv")
+    rows = [(symbol, day, "", "", 10) for symbol in ("METAL", "GONE") for day in SESSIONS[:6]]
+    rates = [12 if day == SESSIONS[4] else 1.2 for day in SESSIONS[:6]]
+    rows += [("PAIR", day, "", "", rate) for day, rate in zip(SESSIONS, rates, strict=False)]
+    desk.bring("prices", table_text(HEADER, rows))
+    merged = f"GONE,{SESSIONS[3]},merger,1,METAL\n"
+    desk.bring("actions", f"instrument,effective,action,ratio,into\n{merged}")
+    desk.calls(("C1", "t.mavren", SESSIONS[2], "GONE", "ends above 15", SESSIONS[4]))
+    assert desk.outcomes(SESSIONS[5])["C1"]["reason"] == "a price in query decides it"
+    found = {(one["instrument"], one["session"], one["value"]) for one in waiting(desk)}
+    assert found == {("PAIR", SESSIONS[4], "12.0")}
+    assert "PAIR" in desk.run("trace", "C1").stdout
+    desk.run("confirm", "PAIR", SESSIONS[4], "--evidence", "Bulletin no. 48")
+    assert desk.outcomes(SESSIONS[5])["C1"]["outcome"] == "hit"
+    assert float(desk.outcomes()["C1"]["decided_price"]) == pytest.approx(120)
