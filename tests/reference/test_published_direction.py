@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+from statsmodels.stats.diagnostic import pesaran_timmermann as library_test
 
 from foresaid.score.direction import (
     DirectionTable,
@@ -25,8 +26,9 @@ def test_both_forms_of_the_variance(cross_term, z):
 
     Its function leaves the term in 1/n^2 out (two-sided p 0.1572992).
     """
-    actual = np.array([1.2, -0.4, 0.0, 0.9, -1.1, 0.5, -0.2, 0.3]) > 0
-    said = np.array([0.6, -0.2, -0.1, 1.0, 0.7, 0.2, -0.4, -0.6]) > 0
+    moves = np.array([1.2, -0.4, 0.0, 0.9, -1.1, 0.5, -0.2, 0.3])
+    forecasts = np.array([0.6, -0.2, -0.1, 1.0, 0.7, 0.2, -0.4, -0.6])
+    actual, said = moves > 0, forecasts > 0
     table = DirectionTable(
         int((said & actual).sum()),
         int((said & ~actual).sum()),
@@ -37,6 +39,13 @@ def test_both_forms_of_the_variance(cross_term, z):
     assert found.z == pytest.approx(z, abs=5e-8)
     if not cross_term:
         assert found.p_two_sided == pytest.approx(0.1572992, abs=5e-8)
+        for one, p in (
+            ("larger", found.p_upper),
+            ("smaller", found.p_lower),
+            ("two-sided", found.p_two_sided),
+        ):
+            library = library_test(moves, forecasts, alternative=one)
+            assert (found.z, p) == pytest.approx((library.statistic, library.pvalue), rel=1e-12)
 
 
 def test_finley_tornadoes():
@@ -45,9 +54,11 @@ def test_finley_tornadoes():
     D. B. Stephenson (2000). Use of the odds ratio for diagnosing forecast skill. Weather and
     Forecasting 15, 221-232 (counts and score as printed on public verification pages).
     """
-    assert hit_less_false_alarm(DirectionTable(28, 72, 23, 2680)) == pytest.approx(
-        0.523, abs=5e-4
-    )
+    table = DirectionTable(28, 72, 23, 2680)
+    assert hit_less_false_alarm(table) == pytest.approx(0.523, abs=5e-4)
+    assert table.hit_rate == pytest.approx(0.549, abs=5e-4)
+    # worked out from the counts, not printed there
+    assert table.false_alarm_rate == pytest.approx(0.0261628, abs=5e-8)
 
 
 def test_approval_ratings():

@@ -77,7 +77,8 @@ def paired_test(first: BoolArray, second: BoolArray) -> PairedTest:
     Raises
     ------
     ValueError
-        If the arrays are not flat or differ in length.
+        If the arrays are not flat, differ in length, or hold anything but true and false (or
+        1 and 0).
 
     Notes
     -----
@@ -94,7 +95,7 @@ def paired_test(first: BoolArray, second: BoolArray) -> PairedTest:
     >>> paired_test(np.array([1, 1, 1, 0], bool), np.array([0, 0, 0, 0], bool)).p_two_sided
     0.25
     """
-    a, b = _flat("first", first).astype(bool), _flat("second", second).astype(bool)
+    a, b = _flags("first", first), _flags("second", second)
     _same_length(first=a, second=b)
     only_first, only_second = int((a & ~b).sum()), int((b & ~a).sum())
     differ = only_first + only_second
@@ -121,7 +122,7 @@ def diebold_mariano(
     -------
     LossTest or None
         None with fewer than 8 pairs, with a horizon of n or more, or where the estimated
-        variance is not positive; no other kernel is tried then.
+        variance is not positive or mere rounding; no other kernel is tried then.
 
     Raises
     ------
@@ -133,7 +134,9 @@ def diebold_mariano(
     -----
     With differences d, :math:`V = (\gamma_0 + 2 \sum_{k<h} \gamma_k)/n`, autocovariances with
     divisor n and the rectangular kernel, :math:`DM = \bar d / \sqrt V` times
-    :math:`\sqrt{(n + 1 - 2h + h(h-1)/n)/n}`.
+    :math:`\sqrt{(n + 1 - 2h + h(h-1)/n)/n}`. For :math:`h = 1` this is Student's paired test.
+    Rounding means :math:`nV` of at most 1e-15 of the mean square difference, as where all
+    differences are the same.
 
     References
     ----------
@@ -155,21 +158,29 @@ def diebold_mariano(
     for name, values in (("first", a), ("second", b)):
         if not np.isfinite(values).all():
             raise ValueError(f"{name} holds {float(values[~np.isfinite(values)][0])!r}")
-    n = len(a)
-    if n < FEWEST_PAIRS or horizon >= n:
+    n, h = len(a), int(horizon)
+    if n < FEWEST_PAIRS or h >= n:
         return None
-    difference = a.astype(float) - b.astype(float)
+    difference = a - b
     mean = float(difference.mean())
     rest = difference - mean
-    covariances = [float(rest[k:] @ rest[: n - k]) / n for k in range(horizon)]
+    covariances = [float(rest[k:] @ rest[: n - k]) / n for k in range(h)]
     variance = (covariances[0] + 2.0 * sum(covariances[1:])) / n
     scale = float((difference**2).mean())
-    correction = (n + 1 - 2 * horizon + horizon * (horizon - 1) / n) / n
-    if variance <= 1e-15 * scale / n or correction <= 0.0:
+    if variance <= 1e-15 * scale / n:
         return None
+    correction = (n + 1 - 2 * h + h * (h - 1) / n) / n  # (n - h)(n - h + 1) / n^2, so above 0
     t = mean / math.sqrt(variance) * math.sqrt(correction)
     p = 2.0 * float(special.stdtr(n - 1, -abs(t)))
-    return LossTest(mean, t, p, n, horizon)
+    return LossTest(mean, t, p, n, h)
+
+
+def _flags(name: str, values: BoolArray) -> BoolArray:
+    array = np.asarray(values)
+    wrong = ~np.isin(array, (0, 1))
+    if wrong.any():
+        raise ValueError(f"{name} holds {array[wrong][0].item()!r}, must be true or false")
+    return _flat(name, array).astype(np.bool_)
 
 
 def _flat(name: str, values: FloatArray | BoolArray) -> FloatArray:
@@ -179,6 +190,6 @@ def _flat(name: str, values: FloatArray | BoolArray) -> FloatArray:
     return array
 
 
-def _same_length(*, first: FloatArray, second: FloatArray) -> None:
+def _same_length(*, first: FloatArray | BoolArray, second: FloatArray | BoolArray) -> None:
     if len(first) != len(second):
         raise ValueError(f"first has length {len(first)}, second {len(second)}")
