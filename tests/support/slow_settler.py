@@ -811,7 +811,7 @@ class SlowSettler:
         said = read_moment(call.at, zone)
         start = said
         claim = read_claim(call.claim)
-        senseless = self.senseless(thing, claim, said, call.horizon)
+        senseless = self.senseless(call, claim, said)
         if senseless:
             return Answer("void", senseless)
         if call.given:
@@ -836,14 +836,16 @@ class SlowSettler:
             answer.flags.add("alternates disagree")
         return answer
 
-    def senseless(self, thing: Thing, claim: Claim, said: Moment, horizon: str) -> str:
+    def senseless(self, call: Said, claim: Claim, said: Moment) -> str:
         """Return why a claim has no answer on its instruments whatever the prices."""
+        thing = self.things[call.symbol]
         if thing.series == "total-return" and any(not unit for _, unit in claim.numbers):
             return NO_LEVELS
         if any(self.things[symbol].kind == "yield" for symbol in claim.others):
             return NO_RETURN
-        _, sessions = deadline_of(horizon, said.day)
-        line = self.line(thing.symbol, "", clean=False)
+        _, sessions = deadline_of(call.horizon, said.day)
+        line = self.line(thing.symbol, call.currency, clean=False)
+        line = line or self.line(thing.symbol, "", clean=False)
         if claim.others and sessions and line.fixed:
             reference = self.window(line, said, None, sessions).reference
             if reference is None or reference + sessions > len(line.day) - 1:
@@ -986,6 +988,8 @@ class Job:
     def wait_for_legs(self, line: Line, legs: list[Line], window: Window) -> None:
         """A comparison on an ended instrument waits for its deadline day."""
         if not line.fixed or window.last not in (None, len(line.day) - 1):
+            return
+        if window.reason == MISSING:
             return
         if window.deadline is None:
             if window.reference is None or window.reference + self.sessions >= len(line.day):
@@ -1258,7 +1262,10 @@ class Job:
             return Verdict("void", NO_RETURN)
         begin = [last_by(leg, line.day[reference]) for leg in legs]
         known = zip(legs, begin, strict=True)
-        if any(at is None or self.was_over(leg, line.day[reference]) for leg, at in known):
+        day = line.day[reference]
+        if any(
+            at is None or leg.close[at] <= 0 or self.was_over(leg, day) for leg, at in known
+        ):
             return Verdict("void", NO_LEG_REFERENCE)
         if window.last is None:
             return Verdict("open")

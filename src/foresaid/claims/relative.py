@@ -60,7 +60,10 @@ class RelativeKernel(Kernel):
             number = np.where(real, leg, 0)
             calendar, over = bars.calendar(number), bars.over[number]
             start, _, had_ended = calendar.look_up(bars.day[windows.reference])
-            before |= real & ((start < bars.offsets[number]) | (over & had_ended))
+            no_price = (start < bars.offsets[number]) | (over & had_ended)
+            # a price at or below zero is none to measure a return from
+            no_price |= bars.close[np.maximum(start, 0)] <= 0
+            before |= real & no_price
             behind |= real & (_until(bars, windows) > bars.reach[number])
         return [
             Unfit(windows.additive, NO_RETURN),
