@@ -226,7 +226,7 @@ class _Teller:
 
     def _reference(self) -> str:
         if self.row["reference_session"] is None:
-            return "no session yet whose close is at or after publication"
+            return f"none: {self.row['reason'] or 'no session at or after publication yet'}"
         return (
             f"{self.row['reference_session']}, the first session whose close is at or after "
             f"publication: {price_text(self.row['reference_price'])}"
